@@ -1,0 +1,69 @@
+#pragma once
+/// Everything that the analysis needs to know of one series of frames, in sums. The value that `accumulate` makes.
+///
+/// A region is divided into blocks (columns x rows of them, row by row). Frames are taken in balanced groups of at most
+/// eight. All sums of a block are of pixel - centre, with one constant centre per block; sums of integer pixels of up to
+/// 16 bits are exact integers as long as they stay below 2^53. A pixel that was set aside as a hit is replaced, in
+/// the frame that was hit, by the mean of that pixel in the other frames of its group, before anything is summed; each
+/// costs one degree of freedom of the temporal variance.
+
+#include <array>
+#include <cstddef>
+#include <cstdint>
+#include <string>
+#include <vector>
+
+#include "base/image.h"
+
+namespace evenfield {
+
+inline constexpr int kGroupFrames = 8;
+
+/// Place of frames i <= j of a group of `frames` frames in the upper triangle of its Gram matrix.
+constexpr std::size_t pair_index(int i, int j, int frames) {
+  return static_cast<std::size_t>(i * (2 * frames - i + 1) / 2 + (j - i));
+}
+constexpr std::size_t pair_count(int frames) { return static_cast<std::size_t>(frames * (frames + 1) / 2); }
+
+/// A group of consecutive frames.
+struct GroupStatistics {
+  int first_frame = 0;
+  int frames = 0;
+  std::vector<double> sums;  ///< [block][frame of the group]: sum over pixels of (y - centre)
+  std::vector<double> gram;  ///< [block][pair]: sum over pixels of (y_i - centre)(y_j - centre)
+};
+
+/// An extreme code and how many samples have it.
+struct Extreme {
+  double code = 0;
+  std::int64_t count = 0;
+};
+
+struct RegionStatistics {
+  Rect rect;
+  int columns = 0;  ///< blocks side by side
+  int rows = 0;     ///< blocks one below the other
+  std::vector<double> centre;              ///< [block] DN
+  std::vector<std::int64_t> pixels;        ///< [block]
+  std::vector<GroupStatistics> groups;
+  std::vector<double> total_square;        ///< [block] sum over pixels of (sum over all frames of (y - centre))^2
+  std::vector<Extreme> lowest, highest;    ///< [block] over all frames, hits included
+  std::vector<std::int64_t> block_hits;    ///< [block] samples set aside
+  std::vector<std::int64_t> frame_hits;    ///< [frame] samples set aside
+  std::vector<double> row_sums;            ///< [frame][row of the region] sum over columns of y, DN
+  std::vector<double> column_sums;         ///< [column of the region] sum over rows and frames of y, DN
+
+  std::size_t blocks() const { return centre.size(); }
+};
+
+struct SeriesStatistics {
+  int frames = 0;
+  FrameShape shape;
+  std::vector<RegionStatistics> regions;
+  /// [frame] XXH3-128 of the decoded pixels of every row that a region touches, as 32 hexadecimal digits; it
+  /// depends neither on the container nor on how the regions lie within those rows.
+  std::vector<std::string> fingerprints;
+  std::vector<double> code_sample;  ///< ascending, each once: codes that occur in some rows of the first frame
+};
+
+}  // namespace evenfield

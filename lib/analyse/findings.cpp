@@ -1,0 +1,212 @@
+#include "analyse/findings.h"
+
+#include <algorithm>
+#include <cmath>
+#include <map>
+#include <set>
+
+#include "base/text.h"
+#include "model/quantization.h"
+#include "model/student.h"
+
+namespace evenfield {
+namespace {
+
+/// EMVA 1288 asks for several levels in the range of the linearity error; nine is what its Release 3.1 names (from memory).
+constexpr std::size_t kLinearityLevels = 9;
+/// Dark current that a camera may have unseen (common practice, no source): what sets the grade of an unmatched dark.
+constexpr double kUnseenDarkCurrent_e_per_s = 10.0;
+
+std::string in_region(const RegionLevels& levels) {
+  const std::string& name = levels.input().regions[levels.region()].name;
+  return name == "whole" ? "" : " in region " + name;
+}
+
+void add(std::vector<Finding>& out, Finding finding) { out.push_back(std::move(finding)); }
+
+void copies(const AnalysisInput& input, std::vector<Finding>& out) {
+  std::map<std::string, std::vector<int>> where;
+  const int regions = static_cast<int>(input.regions.size());
+  for (std::size_t s = 0; s < input.series.size(); ++s) {
+    // Frames that hold one code everywhere are all alike without being copies.
+    bool constant = true;
+    for (const RegionSummary& region : input.series[s].regions)
+      constant = constant && region.lowest.code == region.highest.code;
+    if (constant) continue;
+    for (const std::string& print : input.series[s].fingerprints) where[print].push_back(static_cast<int>(s));
+  }
+  int extra = 0;
+  std::set<int> series;
+  for (const auto& [print, owners] : where) {
+    if (owners.size() < 2) continue;
+    extra += static_cast<int>(owners.size()) - 1;
+    for (const int s : owners) series.insert(s * regions);
+  }
+  if (extra == 0) return;
+  add(out, {"duplicate-frames", Severity::problem,
+            std::to_string(extra) + " frames are copies of other frames, pixel for pixel. A copy has no noise of its own: variances come "
+            "out too small, and gain and read noise with them. Remove the copies and measure again.",
+            {series.begin(), series.end()},
+            {"conversion_gain_dn_per_e", "read_noise_e", "read_noise_dn"},
+            {{"copies", extra}}});
+}
+
+}  // namespace
+
+std::vector<Finding> session_findings(const AnalysisInput& input, const Codes& codes) {
+  std::vector<Finding> out;
+  if (codes.inferred_bit_depth) {
+    const bool contradicted = input.bit_depth.has_value();
+    std::string message = contradicted
+                              ? "The frames hold codes that a converter of " + std::to_string(*input.bit_depth) + " bits cannot give. "
+                              : std::string("The session does not state camera.bit_depth. ");
+    message += std::to_string(*codes.inferred_bit_depth) + " bits were inferred from the codes that occur";
+    message += codes.plateau ? "; saturation was told from the frames and does not depend on it." : "; saturation is told by it where no frame saturates. State camera.bit_depth.";
+    add(out, {"bit-depth-inferred", contradicted ? Severity::caution : Severity::info, message, {},
+              {"saturation_dn", "saturation_capacity_e"}, {{"bit_depth", *codes.inferred_bit_depth}, {"step_dn", codes.step_dn}}});
+  }
+  if (input.floating && codes.step_dn == 0)
+    add(out, {"coarse-quantization", Severity::info,
+              "The pixels are floating-point numbers without a step, so that no quantization noise is taken out of the read noise.",
+              {}, {"read_noise_dn", "read_noise_e"}, {{"step_dn", 0.0}}});
+  copies(input, out);
+  return out;
+}
+
+namespace {
+
+void noise_findings(const RegionLevels& levels, const std::vector<int>& rows, std::vector<Finding>& out) {
+  const double step = levels.codes().step_dn;
+  for (std::size_t s = 0; s < levels.input().series.size(); ++s) {
+    const RegionSummary& summary = levels.summary(s);
+    if (levels.input().series[s].conditions.kind == SeriesKind::flat || !summary.variance) continue;
+    const double variance = *summary.variance;
+    if (variance <= 0) {
+      add(out, {"zero-noise", Severity::problem,
+                "A dark series" + in_region(levels) + " has no temporal noise at all (every frame holds the same numbers), which no camera "
+                "does. Read noise and gain cannot rest on it. Replace it by frames that were really read out.",
+                {rows[s]}, {"read_noise_dn", "read_noise_e", "conversion_gain_dn_per_e"}, {{"variance_dn2", variance}}});
+    } else if (step > 0 && variance < kCoarseVariance * step * step) {
+      const bool unresolved = variance < kUnresolvedVariance * step * step;
+      add(out, {"coarse-quantization", unresolved ? Severity::problem : Severity::caution,
+                "The dark noise" + in_region(levels) + " is " + to_text(std::sqrt(variance) / step, 3) +
+                    " steps of the converter. Rounding then hides or distorts it (resolved from 0.49 steps on, safe from 0.67). Use a "
+                    "higher gain setting of the camera to measure read noise.",
+                {rows[s]}, {"read_noise_dn", "read_noise_e", "dynamic_range_db"},
+                {{"variance_dn2", variance}, {"step_dn", step}}});
+    }
+  }
+}
+
+void frame_findings(const RegionLevels& levels, const std::vector<int>& rows, std::vector<Finding>& out) {
+  std::vector<int> single;
+  for (std::size_t s = 0; s < levels.input().series.size(); ++s)
+    if (levels.summary(s).frames < 2) single.push_back(rows[s]);
+  if (!single.empty()) {
+    bool all = single.size() == levels.input().series.size();
+    add(out, {"too-few-frames", all ? Severity::problem : Severity::caution,
+              std::to_string(single.size()) + " series" + in_region(levels) +
+                  " have one frame each. One frame does not tell noise from pattern: these series take no part in gain, noise, DSNU and PRNU. "
+                  "Take two frames or more of each level, and sixteen or more darks.",
+              single, {"conversion_gain_dn_per_e", "read_noise_e", "dsnu_e", "prnu_percent"}, {{"series", static_cast<double>(single.size())}}});
+  }
+}
+
+void level_findings(const RegionLevels& levels, const GainAndNoise& gain, const Response& response, const std::vector<int>& rows, std::vector<Finding>& out) {
+  if (levels.levels().empty()) return;
+  std::vector<int> saturated;
+  for (const Level& level : levels.levels())
+    if (levels.saturated(level)) saturated.push_back(rows[level.series]);
+  if (!saturated.empty())
+    add(out, {"saturated", Severity::info,
+              std::to_string(saturated.size()) + " light levels" + in_region(levels) +
+                  " have more than 0.2 % of their pixels at the top code. They tell where saturation is and take part in nothing else.",
+              saturated, {"saturation_dn"}, {{"top_code_dn", *levels.codes().top_code}, {"levels", static_cast<double>(saturated.size())}}});
+  std::set<double> axes;
+  for (const std::size_t i : response.levels) axes.insert(*axis_of(levels, levels.levels()[i]));
+  std::set<double> gain_signals;
+  for (const std::size_t i : gain.gain_levels) gain_signals.insert(levels.levels()[i].signal);
+  if (gain.gain && gain_signals.size() < 3)
+    add(out, {"too-few-levels", Severity::caution,
+              "The gain" + in_region(levels) + " rests on " + std::to_string(gain_signals.size()) +
+                  " light level" + (gain_signals.size() == 1 ? "" : "s") + " and the dark: a curved relation cannot be seen, nor can linearity and saturation be had. "
+                  "Take twelve levels or more from dark to past saturation.",
+              {}, {"conversion_gain_dn_per_e", "linearity_error_percent", "saturation_capacity_e"},
+              {{"levels", static_cast<double>(gain_signals.size())}}});
+  else if (response.line && axes.size() < kLinearityLevels)
+    add(out, {"too-few-levels", Severity::info,
+              "The linearity error" + in_region(levels) + " rests on " + std::to_string(axes.size()) +
+                  " light levels between 5 and 95 % of the range; nine or more show where it bends.",
+              {}, {"linearity_error_percent"}, {{"levels", static_cast<double>(axes.size())}}});
+}
+
+void dark_findings(const RegionLevels& levels, const GainAndNoise& gain, const std::vector<int>& rows, std::vector<Finding>& out) {
+  std::vector<int> none;
+  for (std::size_t s = 0; s < levels.input().series.size(); ++s)
+    if (levels.input().series[s].conditions.kind == SeriesKind::flat && match_dark(levels.input(), levels.region(), levels.input().series[s].conditions).mean.empty())
+      none.push_back(rows[s]);
+  if (!none.empty())
+    add(out, {"unmatched-dark", Severity::problem,
+              std::to_string(none.size()) + " flat series" + in_region(levels) +
+                  " have no dark of the same settings (em_gain, control_v, temperature within 1 K) and were left out. Take darks with them.",
+              none, {"conversion_gain_dn_per_e", "linearity_error_percent", "prnu_percent"}, {{"series", static_cast<double>(none.size())}}});
+
+  std::vector<int> series;
+  double worst_s = 0;
+  double worst_percent = 0;
+  bool extrapolated = false;
+  for (const Level& level : levels.levels()) {
+    const double difference = level.dark.exposure_difference_s;
+    if (difference == 0 && !level.dark.extrapolated) continue;
+    series.push_back(rows[level.series]);
+    extrapolated = extrapolated || level.dark.extrapolated;
+    if (difference == 0 || level.signal <= 0) continue;
+    if (std::abs(difference) > std::abs(worst_s)) worst_s = difference;
+    if (gain.gain && !levels.saturated(level))
+      worst_percent = std::max(worst_percent, 100 * kUnseenDarkCurrent_e_per_s * std::abs(difference) * gain.gain->value / level.signal);
+  }
+  if (series.empty()) return;
+  const bool matters = worst_percent > 1.0;
+  std::string message = worst_s != 0
+      ? "Darks of one exposure serve flats of others" + in_region(levels) + ", up to " + to_text(worst_s, 3) + " s away. A dark current of " +
+            to_text(kUnseenDarkCurrent_e_per_s, 3) + " e-/s would change the signal by up to " + to_text(worst_percent, 2) + " %. Take darks at the flats' exposures."
+      : "Some flats" + in_region(levels) + " have exposures outside those of the darks; the dark level there was extrapolated. Take darks at the flats' exposures.";
+  add(out, {"unmatched-dark", matters ? Severity::caution : Severity::info, message, series,
+            {"conversion_gain_dn_per_e", "linearity_error_percent", "prnu_percent"},
+            {{"exposure_difference_s", worst_s}, {"signal_change_percent", worst_percent}}});
+}
+
+void drift_findings(const RegionLevels& levels, const std::vector<int>& rows, std::vector<Finding>& out) {
+  if (levels.flicker_dof() <= 0) return;
+  const double percent = 100 * levels.flicker();
+  std::vector<int> series;
+  for (const Level& level : levels.levels())
+    if (levels.summary(level.series).scaled && !levels.saturated(level)) series.push_back(rows[level.series]);
+  // Light that scatters by less leaves the linearity error in peace; the scatter is taken out of all variances.
+  constexpr double kSeen_percent = 0.2;
+  constexpr double kTouches_percent = 1.0;
+  if (percent < kSeen_percent) return;
+  const bool touches = percent > kTouches_percent;
+  add(out, {"light-drift", touches ? Severity::caution : Severity::info,
+            "The light" + in_region(levels) + " changes by " + to_text(percent, 2) +
+                " % (rms) from frame to frame. It was scaled out of the variances; means, and with them the linearity error, keep their share. "
+                "Let the source warm up, or take more frames of each level.",
+            series, {"linearity_error_percent", "prnu_percent"}, {{"flicker_percent", percent}}});
+}
+
+}  // namespace
+
+std::vector<Finding> region_findings(const RegionLevels& levels,
+                                     const GainAndNoise& gain,
+                                     const Response& response,
+                                     const std::vector<int>& rows) {
+  std::vector<Finding> out;
+  noise_findings(levels, rows, out);
+  frame_findings(levels, rows, out);
+  level_findings(levels, gain, response, rows, out);
+  dark_findings(levels, gain, rows, out);
+  drift_findings(levels, rows, out);
+  return out;
+}
+
+}  // namespace evenfield

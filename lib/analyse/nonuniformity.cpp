@@ -1,0 +1,68 @@
+#include "analyse/nonuniformity.h"
+
+#include <cmath>
+
+#include "model/spatial.h"
+
+namespace evenfield {
+namespace {
+
+SpatialEstimate spatial_estimate(const RegionLevels& levels, std::size_t series) {
+  const RegionSummary& s = levels.summary(series);
+  const double variance =
+      spatial_variance_variance(*s.spatial_variance, *s.variance, {s.pixels, static_cast<double>(s.frames)});
+  return {*s.spatial_variance, std::sqrt(variance), series};
+}
+
+/// Of these darks the one of most frames; of equals the shortest exposure.
+std::optional<std::size_t> best_dark(const RegionLevels& levels, const std::vector<std::size_t>& darks) {
+  std::optional<std::size_t> best;
+  const auto exposure = [&](std::size_t s) { return levels.input().series[s].conditions.exposure_s.value_or(1e300); };
+  for (const std::size_t s : darks) {
+    const RegionSummary& summary = levels.summary(s);
+    if (!summary.spatial_variance) continue;
+    if (!best || summary.frames > levels.summary(*best).frames ||
+        (summary.frames == levels.summary(*best).frames && exposure(s) < exposure(*best)))
+      best = s;
+  }
+  return best;
+}
+
+}  // namespace
+
+Nonuniformity find_nonuniformity(const RegionLevels& levels) {
+  Nonuniformity out;
+  std::vector<std::size_t> darks;
+  for (std::size_t s = 0; s < levels.input().series.size(); ++s)
+    if (levels.input().series[s].conditions.kind != SeriesKind::flat) darks.push_back(s);
+  if (const auto best = best_dark(levels, darks))
+    out.dark = spatial_estimate(levels, *best);
+  else
+    out.dark_reason = "needs a dark or bias series of two frames or more";
+
+  const Level* nearest = nullptr;
+  const double half = 0.5 * levels.top().signal_dn;
+  for (const Level& level : levels.levels()) {
+    if (levels.saturated(level) || level.signal <= 0 || !levels.summary(level.series).spatial_variance) continue;
+    if (nearest == nullptr || std::abs(level.signal - half) < std::abs(nearest->signal - half)) nearest = &level;
+  }
+  if (nearest == nullptr) {
+    out.light_reason = "needs an unsaturated flat series of two frames or more, and matching darks";
+    return out;
+  }
+  const auto dark = best_dark(levels, matching_darks(levels.input(), levels.input().series[nearest->series].conditions));
+  if (!dark) {
+    out.light_reason = "needs a matching dark series of two frames or more";
+    return out;
+  }
+  const SpatialEstimate flat = spatial_estimate(levels, nearest->series);
+  const SpatialEstimate off = spatial_estimate(levels, *dark);
+  out.light = {flat.square - off.square, std::hypot(flat.square_uncertainty, off.square_uncertainty), nearest->series};
+  out.light_signal_dn = nearest->signal;
+  double variance = std::pow(levels.mean_uncertainty(nearest->series), 2);
+  for (const auto& [series, weight] : nearest->dark.mean) variance += std::pow(weight * levels.mean_uncertainty(series), 2);
+  out.light_signal_uncertainty_dn = std::sqrt(variance);
+  return out;
+}
+
+}  // namespace evenfield

@@ -1,0 +1,82 @@
+#include "analyse/quantities.h"
+
+#include <array>
+#include <cmath>
+#include <limits>
+
+#include "model/gum.h"
+#include "model/student.h"
+
+namespace evenfield {
+namespace {
+
+constexpr double kCoverage = 0.95;
+
+}  // namespace
+
+Quantity known(std::string name, const std::string& region, const Estimate& estimate, std::string method, std::string note) {
+  Quantity q;
+  q.name = std::move(name);
+  q.region = region;
+  q.value = estimate.value;
+  q.statistical_uncertainty = estimate.statistical_uncertainty;
+  q.common_uncertainty = estimate.common_uncertainty;
+  q.standard_uncertainty = std::hypot(estimate.statistical_uncertainty, estimate.common_uncertainty);
+  if (estimate.degrees_of_freedom && estimate.statistical_uncertainty > 0) {
+    constexpr double kMany = std::numeric_limits<double>::infinity();
+    const std::array parts{Contribution{estimate.statistical_uncertainty, *estimate.degrees_of_freedom},
+                           Contribution{estimate.common_uncertainty, kMany}};
+    q.degrees_of_freedom = effective_degrees_of_freedom(parts);
+  }
+  const double half = coverage_factor(kCoverage, q.degrees_of_freedom) * *q.standard_uncertainty;
+  q.low95 = estimate.value - half;
+  q.high95 = estimate.value + half;
+  q.method = std::move(method);
+  q.note = std::move(note);
+  return q;
+}
+
+Quantity unknown(std::string name, const std::string& region, std::string reason) {
+  Quantity q;
+  q.name = std::move(name);
+  q.region = region;
+  q.note = std::move(reason);
+  return q;
+}
+
+Quantity root_of_square(std::string name,
+                        const std::string& region,
+                        double square,
+                        double square_uncertainty,
+                        double divisor,
+                        double divisor_relative_uncertainty,
+                        std::string method,
+                        std::string note) {
+  Quantity q;
+  q.name = std::move(name);
+  q.region = region;
+  q.method = std::move(method);
+  if (square <= 0) {
+    const double one_sided = normal_quantile(kCoverage);
+    q.high95 = std::sqrt(std::max(0.0, square + one_sided * square_uncertainty)) / divisor;
+    q.note = "not resolved: less than the temporal noise can hide; the upper limit is one-sided";
+    if (!note.empty()) q.note += "; " + note;
+    return q;
+  }
+  const double k = coverage_factor(kCoverage, std::nullopt);
+  const double value = std::sqrt(square) / divisor;
+  const double own = square_uncertainty / (2 * std::sqrt(square)) / divisor;
+  const double scale = value * divisor_relative_uncertainty;
+  q.value = value;
+  q.statistical_uncertainty = std::hypot(own, scale);
+  q.standard_uncertainty = q.statistical_uncertainty;
+  q.common_uncertainty = 0.0;
+  const double low = std::sqrt(std::max(0.0, square - k * square_uncertainty)) / divisor;
+  const double high = std::sqrt(square + k * square_uncertainty) / divisor;
+  q.low95 = std::max(0.0, value - std::hypot(value - low, k * scale));
+  q.high95 = value + std::hypot(high - value, k * scale);
+  q.note = std::move(note);
+  return q;
+}
+
+}  // namespace evenfield

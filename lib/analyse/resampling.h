@@ -1,0 +1,32 @@
+#pragma once
+/// Sums of a summary over the units that the jackknife leaves out one by one: blocks, or bands of whole rows of blocks
+/// where the pixels of a row share noise.
+
+#include <vector>
+
+#include "analyse/series_summary.h"
+
+namespace evenfield {
+
+enum class ResamplingUnit { blocks, bands };
+
+int unit_count(const RegionSummary& summary, ResamplingUnit unit);
+
+/// One series; `left_out` -1 leaves out nothing.
+class UnitSums {
+ public:
+  UnitSums(const RegionSummary& summary, ResamplingUnit unit);
+  double mean(int left_out) const;      ///< DN
+  double variance(int left_out) const;  ///< temporal [DN^2], 0 for a single frame
+  double dof(int left_out) const;
+
+ private:
+  struct Sums {
+    double pixels = 0, sum = 0, squares = 0, dof = 0;
+  };
+  Sums without(int left_out) const;
+  std::vector<Sums> units_;
+  Sums all_;
+};
+
+}  // namespace evenfield

@@ -1,0 +1,30 @@
+#pragma once
+/// Response and linearity error of one region: signal against exposure x light, after EMVA 1288 (model/linearity.h).
+
+#include <optional>
+#include <string>
+#include <vector>
+
+#include "analyse/levels.h"
+#include "analyse/quantities.h"
+#include "model/linearity.h"
+
+namespace evenfield {
+
+inline constexpr double kLinearityLow = 0.05;   ///< of the range top
+inline constexpr double kLinearityHigh = 0.95;
+
+struct Response {
+  std::optional<Linearity> line;
+  std::vector<std::size_t> levels;        ///< indices into RegionLevels::levels() of the line's points
+  std::optional<Estimate> error_percent;  ///< LE
+  std::string reason;                     ///< why there is none
+  std::string note;
+};
+
+/// exposure_s x light of a level, if its exposure is known.
+std::optional<double> axis_of(const RegionLevels& levels, const Level& level);
+
+Response find_response(const RegionLevels& levels);
+
+}  // namespace evenfield

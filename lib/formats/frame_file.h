@@ -1,0 +1,72 @@
+#pragma once
+/// Files that hold frames: what their headers say, and how to get at their pixels.
+///
+/// A frame is one grey-scale image: a page of a TIFF file, or a plane of an image of a FITS file. Pages are
+/// numbered from 1 in file order; a FITS cube counts plane by plane. Only headers are read by inspect().
+/// Pixels that lie in the file uncompressed and row by row are described by extents, so that anyone can read them
+/// by offset; all other pixels are decoded a whole frame at a time.
+
+#include <cstdint>
+#include <filesystem>
+#include <memory>
+#include <optional>
+#include <string>
+#include <vector>
+
+#include "base/error.h"
+#include "base/image.h"
+
+namespace evenfield {
+
+/// How stored numbers become DN: swap bytes, then add `offset` in the arithmetic of `stored` modulo its range.
+struct RawEncoding {
+  bool swap_bytes = false;      ///< stored byte order is not this machine's
+  bool flip_sign_bit = false;   ///< the FITS convention for unsigned numbers (and signed bytes)
+};
+
+/// Rows [first_row, first_row + rows) lie at `offset`, `width` pixels each, without gaps.
+struct RawExtent {
+  int first_row = 0;
+  int rows = 0;
+  std::uint64_t offset = 0;
+};
+
+/// One frame in a file. `extents` is empty if the frame must be decoded.
+struct FramePage {
+  FrameShape shape;
+  std::vector<RawExtent> extents;  ///< ascending, covering all rows, every byte inside the file; or empty
+  RawEncoding encoding;
+};
+
+enum class FileFormat { tiff, fits };
+
+/// What headers say about the exposure, where they say it; used for what a session file leaves out.
+struct FrameHeader {
+  std::optional<std::string> acquired;  ///< RFC 3339, from DATE-OBS or DateTime; UTC is assumed
+};
+
+struct FrameFile {
+  std::filesystem::path path;
+  FileFormat format = FileFormat::tiff;
+  std::vector<FramePage> pages;
+  FrameHeader header;
+};
+
+/// Reads the headers of `path`. The format is told from the first bytes, not from the name. Errors (input) name
+/// file, page and tag or keyword: not found, neither TIFF nor FITS, truncated, no frame inside, more than one sample a
+/// pixel, a pixel type or compression outside the list, sizes outside limits.
+Result<FrameFile> inspect(const std::filesystem::path& path);
+
+/// Decodes frames of one file; for one thread at a time.
+class FrameDecoder {
+ public:
+  virtual ~FrameDecoder() = default;
+  /// Frame `page` (from 1) in whole, as native pixels of its shape, rows in order, into `pixels`, which holds
+  /// width x height x bytes_per_pixel bytes. Works for every page, raw ones too.
+  virtual Status decode(int page, void* pixels) = 0;
+};
+// Virtual, because two libraries' handles hide behind it.
+
+Result<std::unique_ptr<FrameDecoder>> open_decoder(const FrameFile& file);
+
+}  // namespace evenfield

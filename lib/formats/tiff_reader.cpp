@@ -1,0 +1,216 @@
+#include "formats/tiff_reader.h"
+
+#include <tiffio.h>
+
+#include <algorithm>
+#include <cstring>
+#include <vector>
+
+#include "formats/disk_file.h"
+#include "formats/frame_limits.h"
+#include "formats/raw_pixels.h"
+#include "formats/tiff_handle.h"
+#include "formats/tiff_page.h"
+
+namespace evenfield {
+
+namespace {
+
+/// Read; no memory mapping (a file that shrinks would kill the program); no pretended short strips.
+constexpr const char* kReadMode = "rmc";
+constexpr std::uint64_t kDirectoryMemory = std::uint64_t{1} << 28U;
+
+Error damaged(const std::filesystem::path& path,
+              int page,
+              const TiffHandle& handle,
+              const std::string& what) {
+  const std::string& said = handle.errors().empty() ? handle.warnings() : handle.errors();
+  return Error{Errc::input, {path, {}, page, {}}, what + (said.empty() ? "" : ": " + said)};
+}
+
+/// Frames that follow the one page of an ImageJ stack, without pages of their own.
+Status add_planes(FrameFile& file, const TiffPage& page, std::uint64_t file_bytes) {
+  const FrameShape& shape = page.frame.shape;
+  const std::uint64_t frame_bytes = static_cast<std::uint64_t>(shape.width) *
+                                    static_cast<std::uint64_t>(shape.height) * bytes_per_pixel(shape.type);
+  const std::uint64_t first = page.frame.extents.front().offset;
+  const auto planes = static_cast<std::uint64_t>(page.planes);
+  if (planes > (file_bytes - first) / frame_bytes || planes > kMaxPages) {
+    return Error{Errc::input,
+                 {file.path, {}, 1, "ImageDescription"},
+                 "found images=" + std::to_string(planes) + " and " + std::to_string(file_bytes) +
+                     " bytes in the file, expected as many frames of " + std::to_string(frame_bytes) +
+                     " bytes from byte " + std::to_string(first) + " on"};
+  }
+  for (std::uint64_t plane = 1; plane < planes; ++plane) {
+    FramePage next = page.frame;
+    next.extents.front().offset = first + plane * frame_bytes;
+    file.pages.push_back(std::move(next));
+  }
+  return Done{};
+}
+
+class TiffDecoder : public FrameDecoder {
+ public:
+  TiffDecoder(const FrameFile& file, DiskFile bytes, TiffHandle handle)
+      : file_(file), bytes_(std::move(bytes)), handle_(std::move(handle)) {}
+
+  Status decode(int page, void* pixels) override {
+    if (page < 1 || page > static_cast<int>(file_.pages.size())) {
+      return Error{Errc::input,
+                   {file_.path, {}, page, {}},
+                   "found " + std::to_string(file_.pages.size()) + " pages, expected this one among them"};
+    }
+    const FramePage& frame = file_.pages[static_cast<std::size_t>(page - 1)];
+    if (!frame.extents.empty()) {
+      const Status status = read_raw_frame(bytes_, frame, pixels);
+      if (status) return status;
+      Error error = status.error();
+      error.where.page = page;
+      return error;
+    }
+    const Status there = go_to(page);
+    if (!there) return there;
+    // Read again: nothing of what is decoded may rest on a file that has changed since it was inspected.
+    const auto now = read_tiff_page(handle_, file_.path, bytes_.size(), page);
+    if (!now) return now.error();
+    if (now->frame.shape != frame.shape)
+      return damaged(file_.path, page, handle_, "changed while it was read");
+    return now->tiled ? decode_tiles(page, *now, pixels) : decode_strips(page, *now, pixels);
+  }
+
+ private:
+  /// Makes frame `page` the current directory. Pages are looked for once, on from the farthest one seen.
+  Status go_to(int page) {
+    handle_.forget();
+    TIFF* tiff = handle_.get();
+    const auto wanted = static_cast<std::size_t>(page);
+    while (directories_.size() < wanted) {
+      if (walked_ > 0) {
+        if (TIFFCurrentDirOffset(tiff) != frontier_ && TIFFSetSubDirectory(tiff, frontier_) == 0)
+          return lost(page);
+        if (walked_ > kMaxPages || TIFFLastDirectory(tiff) != 0 || TIFFReadDirectory(tiff) == 0)
+          return lost(page);
+      }
+      ++walked_;
+      frontier_ = TIFFCurrentDirOffset(tiff);
+      if (is_frame(handle_)) directories_.push_back(frontier_);
+      if (directories_.size() < wanted) handle_.forget();
+    }
+    const std::uint64_t offset = directories_[wanted - 1];
+    if (TIFFCurrentDirOffset(tiff) != offset) {
+      handle_.forget();
+      if (TIFFSetSubDirectory(tiff, offset) == 0) return lost(page);
+    }
+    return Done{};
+  }
+
+  Error lost(int page) const { return damaged(file_.path, page, handle_, "its directory cannot be read"); }
+
+  Status decode_strips(int page, const TiffPage& now, void* pixels) {
+    const FrameShape& shape = now.frame.shape;
+    const std::size_t row_bytes = static_cast<std::size_t>(shape.width) * bytes_per_pixel(shape.type);
+    handle_.forget();
+    std::uint32_t strip = 0;
+    for (int y = 0; y < shape.height; y += now.block_height, ++strip) {
+      const auto rows = static_cast<std::size_t>(std::min(now.block_height, shape.height - y));
+      const auto bytes = static_cast<tmsize_t>(rows * row_bytes);
+      char* to = static_cast<char*>(pixels) + static_cast<std::size_t>(y) * row_bytes;
+      if (TIFFReadEncodedStrip(handle_.get(), strip, to, bytes) != bytes || !handle_.errors().empty()) {
+        return damaged(file_.path, page, handle_,
+                       "strip " + std::to_string(strip + 1) + " cannot be decoded");
+      }
+    }
+    return Done{};
+  }
+
+  Status decode_tiles(int page, const TiffPage& now, void* pixels) {
+    const FrameShape& shape = now.frame.shape;
+    const std::size_t pixel_bytes = bytes_per_pixel(shape.type);
+    const std::size_t row_bytes = static_cast<std::size_t>(shape.width) * pixel_bytes;
+    const std::size_t tile_row_bytes = static_cast<std::size_t>(now.block_width) * pixel_bytes;
+    tile_.resize(tile_row_bytes * static_cast<std::size_t>(now.block_height));
+    const auto bytes = static_cast<tmsize_t>(tile_.size());
+    handle_.forget();
+    std::uint32_t tile = 0;
+    for (int y = 0; y < shape.height; y += now.block_height) {
+      for (int x = 0; x < shape.width; x += now.block_width, ++tile) {
+        if (TIFFReadEncodedTile(handle_.get(), tile, tile_.data(), bytes) != bytes ||
+            !handle_.errors().empty()) {
+          return damaged(file_.path, page, handle_,
+                         "tile " + std::to_string(tile + 1) + " cannot be decoded");
+        }
+        const int rows = std::min(now.block_height, shape.height - y);
+        const auto columns = static_cast<std::size_t>(std::min(now.block_width, shape.width - x));
+        for (int row = 0; row < rows; ++row) {
+          std::memcpy(static_cast<char*>(pixels) + static_cast<std::size_t>(y + row) * row_bytes +
+                          static_cast<std::size_t>(x) * pixel_bytes,
+                      tile_.data() + static_cast<std::size_t>(row) * tile_row_bytes, columns * pixel_bytes);
+        }
+      }
+    }
+    return Done{};
+  }
+
+  FrameFile file_;
+  DiskFile bytes_;
+  TiffHandle handle_;
+  std::vector<std::uint64_t> directories_;  ///< of the frames seen so far
+  std::uint64_t frontier_ = 0;              ///< directory read last on the way through the file
+  std::uint64_t walked_ = 0;
+  std::vector<char> tile_;
+};
+
+}  // namespace
+
+Result<FrameFile> inspect_tiff(const std::filesystem::path& path) {
+  const auto bytes = DiskFile::open(path);
+  if (!bytes) return bytes.error();
+  auto handle = TiffHandle::open(path, kReadMode, kDirectoryMemory, Errc::input);
+  if (!handle) {
+    Error error = handle.error();
+    error.what += " (found " + std::to_string(bytes->size()) + " bytes)";
+    return error;
+  }
+  FrameFile file{path, FileFormat::tiff, {}, {}};
+  TIFF* tiff = handle->get();
+  for (;;) {
+    const int number = static_cast<int>(file.pages.size()) + 1;
+    if (is_frame(*handle)) {
+      if (file.pages.size() >= kMaxPages) {
+        return damaged(path, number, *handle, "found more pages than " + std::to_string(kMaxPages));
+      }
+      auto page = read_tiff_page(*handle, path, bytes->size(), number);
+      if (!page) return page.error();
+      if (file.pages.empty()) file.header.acquired = page->acquired;
+      file.pages.push_back(std::move(page->frame));
+      if (page->planes > 1 && file.pages.size() == 1) {
+        page->frame = file.pages.front();
+        const Status planes = add_planes(file, *page, bytes->size());
+        if (!planes) return planes.error();
+      }
+    }
+    if (TIFFLastDirectory(tiff) != 0) break;
+    handle->forget();
+    if (TIFFReadDirectory(tiff) == 0) {
+      return damaged(path, static_cast<int>(file.pages.size()) + 1, *handle,
+                     "found " + std::to_string(bytes->size()) + " bytes, expected a directory of tags here");
+    }
+  }
+  if (file.pages.empty())
+    return Error{Errc::input, {path, {}, {}, {}}, "found thumbnails only, expected a frame"};
+  return file;
+}
+
+Result<std::unique_ptr<FrameDecoder>> open_tiff_decoder(const FrameFile& file) {
+  auto bytes = DiskFile::open(file.path);
+  if (!bytes) return bytes.error();
+  // The library holds one compressed strip or tile at a time, which cannot be larger than the file.
+  const std::uint64_t memory = std::max(kDirectoryMemory, bytes->size());
+  auto handle = TiffHandle::open(file.path, kReadMode, memory, Errc::input);
+  if (!handle) return handle.error();
+  return std::unique_ptr<FrameDecoder>(
+      std::make_unique<TiffDecoder>(file, std::move(*bytes), std::move(*handle)));
+}
+
+}  // namespace evenfield

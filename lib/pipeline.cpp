@@ -1,0 +1,115 @@
+#include "pipeline.h"
+
+#include <chrono>
+#include <ctime>
+#include <numeric>
+
+#include "accumulate/accumulate.h"
+#include "analyse/analyse.h"
+#include "analyse/dark_match.h"
+#include "base/interrupt.h"
+#include "ingest/open_stack.h"
+#include "ingest/session_reader.h"
+
+namespace evenfield {
+namespace {
+
+/// Darks are not searched for hits in groups of two: a blinking pixel would be taken for one.
+constexpr int kDarkFramesForHits = 3;
+
+std::string now() {
+  const std::time_t time = std::chrono::system_clock::to_time_t(std::chrono::system_clock::now());
+  std::tm utc{};
+  gmtime_r(&time, &utc);
+  char text[32];
+  return {text, std::strftime(text, sizeof text, "%Y-%m-%dT%H:%M:%SZ", &utc)};
+}
+
+AnalysisInput begin_input(const Session& session) {
+  AnalysisInput input;
+  input.bit_depth = session.camera.bit_depth;
+  input.floating = is_floating(session.shape.type);
+  if (session.light) input.level_relative_uncertainty = session.light->level_relative_standard_uncertainty.value_or(0.0);
+  for (const SessionRegion& region : session.regions) input.regions.push_back({region.name, region.rect});
+  for (const Series& series : session.series) {
+    SeriesInput& out = input.series.emplace_back();
+    out.conditions = series.conditions;
+    for (const FrameReference& frame : series.frames) {
+      const std::string& shown = session.files[static_cast<std::size_t>(frame.file)].shown;
+      if (out.files.empty() || out.files.back() != shown) out.files.push_back(shown);
+    }
+  }
+  return input;
+}
+
+/// Series in the order they are read: a flat needs the dark level that darks have shown.
+std::vector<std::size_t> darks_first(const Session& session) {
+  std::vector<std::size_t> order;
+  for (const bool flats : {false, true})
+    for (std::size_t s = 0; s < session.series.size(); ++s)
+      if ((session.series[s].conditions.kind == SeriesKind::flat) == flats) order.push_back(s);
+  return order;
+}
+
+Status read_series(const OpenedSession& opened, const Geometry& geometry, std::size_t s, int threads, AnalysisInput& input) {
+  const Series& series = opened.session.series[s];
+  const auto stack = open_stack(opened.session, series, opened.frame_files, threads);
+  if (!stack) return stack.error();
+  AccumulateOptions options;
+  options.threads = threads;
+  if (series.conditions.kind != SeriesKind::flat) options.fewest_frames_for_hits = kDarkFramesForHits;
+  auto sums = accumulate(*stack, geometry, options);
+  if (!sums) return sums.error();
+  SeriesInput& out = input.series[s];
+  for (std::size_t r = 0; r < input.regions.size(); ++r) {
+    std::optional<double> dark_level;
+    if (series.conditions.kind == SeriesKind::flat) {
+      const SeriesWeights weights = match_dark(input, r, series.conditions).mean;
+      if (!weights.empty())
+        dark_level = std::accumulate(weights.begin(), weights.end(), 0.0, [&](double sum, const auto& dark) {
+          return sum + dark.second * input.series[dark.first].regions[r].mean;
+        });
+    }
+    out.regions.push_back(summarize(sums->regions[r], dark_level));
+  }
+  out.fingerprints = std::move(sums->fingerprints);
+  out.code_sample = std::move(sums->code_sample);
+  return Done{};
+}
+
+}  // namespace
+
+const char* program_version() { return EVENFIELD_VERSION; }
+
+Result<Characterization> measure(const std::filesystem::path& session_file, const MeasureOptions& options) {
+  const auto opened = read_session(session_file, options.threads, options.camera_file);
+  if (!opened) return opened.error();
+  const Session& session = opened->session;
+  AnalysisInput input = begin_input(session);
+  std::vector<Rect> rects;
+  for (const Region& region : input.regions) rects.push_back(region.rect);
+  const Geometry geometry = make_geometry(session.shape, rects);
+
+  int done = 0;
+  for (const std::size_t s : darks_first(session)) {
+    if (interrupt_requested()) return interrupted();
+    if (options.progress) options.progress(done++, static_cast<int>(session.series.size()));
+    if (const Status read = read_series(*opened, geometry, s, options.threads, input); !read) return read.error();
+  }
+  if (options.progress) options.progress(done, done);
+
+  Characterization out = analyse(input);
+  out.program_version = program_version();
+  out.created = now();
+  out.acquired = session.acquired;
+  out.session = {session_file.filename().string(), session.camera_given, session.light_given, session.analysis_given};
+  for (std::size_t s = 0; s < session.series.size(); ++s)
+    for (std::size_t f = 0; f < session.series[s].frames.size(); ++f) {
+      const FrameReference& frame = session.series[s].frames[f];
+      out.frames.push_back({session.files[static_cast<std::size_t>(frame.file)].shown, frame.page,
+                            session.series[s].conditions.kind, input.series[s].fingerprints[f]});
+    }
+  return out;
+}
+
+}  // namespace evenfield
