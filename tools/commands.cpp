@@ -7,6 +7,7 @@
 
 #include "base/parallel.h"
 #include "base/text.h"
+#include "pipeline.h"
 
 namespace evenfield {
 namespace po = boost::program_options;
@@ -17,11 +18,21 @@ void add_common(po::options_description& options) {
       ("quiet", "no messages but errors")
       ("json", "results on standard output as JSON")
       ("progress", po::value<std::string>()->value_name("WHEN")->default_value("auto"), "auto, always or never (auto: on a terminal)")
-      ("help", "this text");
+      ("help", "this text")
+      ("version", "which version this is");
 }
 
-Parsed parse(int argc, char** argv, const po::options_description& options, const po::positional_options_description& positional,
+int output_status() {
+  if (std::cout.flush()) return 0;
+  return report_error({Errc::output, {}, "standard output cannot be written"});
+}
+
+Parsed parse(int argc, char** argv, const po::options_description& shown, const std::string& arguments,
              const std::string& usage, const std::string& description) {
+  po::options_description options;
+  options.add(shown).add_options()(arguments.c_str(), po::value<std::vector<std::string>>());
+  po::positional_options_description positional;
+  positional.add(arguments.c_str(), -1);
   Parsed out;
   const auto refuse = [&](const std::string& what) {
     std::cerr << "evenfield " << argv[0] << ": " << escape_control(what) << "; see evenfield " << argv[0] << " --help\n";
@@ -34,8 +45,13 @@ Parsed parse(int argc, char** argv, const po::options_description& options, cons
     const int style = unix_style & ~po::command_line_style::allow_guessing;
     po::store(po::command_line_parser(argc, argv).options(options).positional(positional).style(style).run(), out.values);
     if (out.values.contains("help")) {
-      std::cout << "Usage: " << usage << "\n\n" << description << "\n\n" << options;
-      out.exit = 0;
+      std::cout << "Usage: " << usage << "\n\n" << description << "\n\n" << shown;
+      out.exit = output_status();
+      return out;
+    }
+    if (out.values.contains("version")) {
+      std::cout << "evenfield " << program_version() << "\n";
+      out.exit = output_status();
       return out;
     }
     po::notify(out.values);

@@ -6,7 +6,6 @@
 #include <vector>
 
 #include <boost/program_options/options_description.hpp>
-#include <boost/program_options/positional_options.hpp>
 #include <boost/program_options/variables_map.hpp>
 
 #include "base/error.h"
@@ -22,7 +21,7 @@ struct CommonOptions {
   bool progress = false;  ///< resolved: show it
 };
 
-/// --threads, --quiet, --json, --progress, --help.
+/// --threads, --quiet, --json, --progress, --help, --version.
 void add_common(boost::program_options::options_description& options);
 
 /// Parses the command line of a sub-command. A value, or an exit status after the message or help was printed.
@@ -31,9 +30,12 @@ struct Parsed {
   boost::program_options::variables_map values;
   CommonOptions common;
 };
-Parsed parse(int argc, char** argv, const boost::program_options::options_description& options,
-             const boost::program_options::positional_options_description& positional, const std::string& usage,
-             const std::string& description);
+/// `shown` are the options of the help; what stands without an option's name goes into `arguments`, a list of strings.
+Parsed parse(int argc, char** argv, const boost::program_options::options_description& shown, const std::string& arguments,
+             const std::string& usage, const std::string& description);
+
+/// 0, or that of an output error, with its message, if standard output could not be written.
+int output_status();
 
 /// One line on standard error, "evenfield: ...", and the exit status of the error.
 int report_error(const Error& error);

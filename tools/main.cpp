@@ -47,11 +47,11 @@ int run(int argc, char** argv) {
   const std::string_view word = argv[1];
   if (word == "--help" || word == "-h" || word == "help") {
     print_help(std::cout);
-    return 0;
+    return output_status();
   }
   if (word == "--version") {
     std::cout << "evenfield " << program_version() << "\n";
-    return 0;
+    return output_status();
   }
   for (const Command& command : kCommands)
     if (command.name == word) return command.run(argc - 1, argv + 1);

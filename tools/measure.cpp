@@ -1,9 +1,8 @@
-#include <array>
-#include <cmath>
 #include <filesystem>
 #include <iostream>
 #include <sstream>
 
+#include "base/interrupt.h"
 #include "base/text.h"
 #include "commands.h"
 #include "pipeline.h"
@@ -51,12 +50,7 @@ int measure_command(int argc, char** argv) {
       ("camera", po::value<std::string>()->value_name("FILE.toml"), "a file with [camera] and [light] that go over the session's")
       ("plots", po::value<std::string>()->value_name("none|all|NAME,...")->default_value("all"), "which pictures to draw");
   add_common(options);
-  po::options_description all;
-  all.add(options).add_options()("session", po::value<std::vector<std::string>>());
-  po::positional_options_description positional;
-  positional.add("session", -1);
-  po::options_description shown("Options", 100);
-  const Parsed parsed = parse(argc, argv, all, positional, "evenfield measure SESSION.toml --out DIR [options]",
+  const Parsed parsed = parse(argc, argv, options, "session", "evenfield measure SESSION.toml --out DIR [options]",
                               "Measures a camera from the flat and dark frames that the session file names, and writes\n"
                               "result.json, CSV tables, pictures and report.html into DIR.");
   if (parsed.exit) return *parsed.exit;
@@ -89,6 +83,7 @@ int measure_command(int argc, char** argv) {
   const auto written = write_report(*result, folder->path(), {*plots});
   line.clear();
   if (!written) return report_error(written.error());
+  if (interrupt_requested()) return report_error(interrupted());
   if (const Status committed = folder->commit(); !committed) return report_error(committed.error());
   if (!written->message.empty() && !parsed.common.quiet) std::cerr << "evenfield: " << escape_control(written->message) << "\n";
   if (parsed.common.json) {
@@ -99,7 +94,7 @@ int measure_command(int argc, char** argv) {
     print_summary(*result, std::cout);
     std::cout << "report: " << escape_control((std::filesystem::path(parsed.values["out"].as<std::string>()) / "report.html").string()) << "\n";
   }
-  return std::cout.flush() ? 0 : exit_status(Errc::output);
+  return output_status();
 }
 
 }  // namespace evenfield

@@ -60,11 +60,7 @@ int synth_command(int argc, char** argv) {
       "format", po::value<std::string>()->value_name("tiff|fits"),
       "kind of frame files, over the scene's own");
   add_common(options);
-  po::options_description all;
-  all.add(options).add_options()("scene", po::value<std::vector<std::string>>());
-  po::positional_options_description positional;
-  positional.add("scene", -1);
-  const Parsed parsed = parse(argc, argv, all, positional, kUsage, kDescription);
+  const Parsed parsed = parse(argc, argv, options, "scene", kUsage, kDescription);
   if (parsed.exit) return *parsed.exit;
   const auto refuse = [](const std::string& what) {
     return report_error({Errc::usage, {}, "synth: " + what + "; see evenfield synth --help"});
@@ -99,7 +95,7 @@ int synth_command(int argc, char** argv) {
     print_json(*scene, folder, std::cout);
   else if (!parsed.common.quiet)
     print_summary(*scene, folder, std::cout);
-  return std::cout.flush() ? 0 : exit_status(Errc::output);
+  return output_status();
 }
 
 }  // namespace evenfield

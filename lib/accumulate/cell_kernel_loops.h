@@ -28,6 +28,8 @@ struct Workspace {
   alignas(64) std::array<std::array<Centred<T>, kCellPixels>, kGroupFrames> centred;
   alignas(64) std::array<Value, kCellPixels> highest;
   alignas(64) std::array<Value, kCellPixels> sum;
+  alignas(64) std::array<double, kCellPixels> squares;
+  alignas(64) std::array<double, kCellPixels> deviation_sums;
   Value* above() { return highest.data(); }
   Value* total() { return sum.data(); }
 };
@@ -200,11 +202,64 @@ double temporal_squares(const CellInput& cell, const CellStatistics& s) {
 /// Limit for frames x (highest deviation) - (sum of deviations), which is (frames - 1) times the distance of the highest
 /// frame from the mean of the others. Two codes more for integers: coarse steps are no hits.
 template <class T>
-double hit_limit(const CellInput& cell, double squares_without_pixel) {
-  const double dof = (cell.width * cell.height - 2.0) * (cell.frames - 1.0);
-  const double variance = dof > 0 && squares_without_pixel > 0 ? squares_without_pixel / dof : 0;
-  return cell.hit_threshold * std::sqrt(variance * cell.frames * (cell.frames - 1.0)) +
+double hit_limit(const CellInput& cell, double variance) {
+  return cell.hit_threshold * std::sqrt(variance > 0 ? variance * cell.frames * (cell.frames - 1.0) : 0.0) +
          (std::is_integral_v<T> ? 2.0 * (cell.frames - 1.0) : 0.0);
+}
+
+/// So many pixels of a cell may be hits; more are a structure that one variance does not describe.
+int most_hits(int pixels) { return pixels / 32 > 4 ? pixels / 32 : 4; }
+
+/// The `rank`-th largest of `count` values (from 0), which are reordered.
+double select_largest(double* values, int count, int rank) {
+  int low = 0;
+  int high = count - 1;
+  while (low < high) {
+    const double pivot = values[low + (high - low) / 2];
+    int i = low;
+    int j = high;
+    while (i <= j) {
+      while (values[i] > pivot) ++i;
+      while (values[j] < pivot) --j;
+      if (i <= j) {
+        const double swapped = values[i];
+        values[i++] = values[j];
+        values[j--] = swapped;
+      }
+    }
+    if (rank <= j)
+      high = j;
+    else if (rank >= i)
+      low = i;
+    else
+      break;
+  }
+  return values[rank];
+}
+
+/// Temporal variance of the cell without the pixels of largest squares, as many as may be hits: never a variance that contains
+/// what is judged by it. Leaving out the largest of clean pixels makes it smaller, by a quarter at most for two frames.
+template <class T>
+double trimmed_variance(const CellInput& cell, Workspace<T>& work, const CellStatistics& s) {
+  const int pixels = cell.width * cell.height;
+  const int left_out = most_hits(pixels);
+  if (pixels <= 2 * left_out) return 0;
+  double* squares = work.squares.data();
+  double* sums = work.deviation_sums.data();
+  for (int f = 0; f < cell.frames; ++f) {
+    const auto* d = work.centred[static_cast<std::size_t>(f)].data();
+    const double mean = s.sums[static_cast<std::size_t>(f)] / pixels;
+    for (int p = 0; p < pixels; ++p) {
+      const double e = static_cast<double>(d[p]) - mean;
+      squares[p] = f == 0 ? e * e : squares[p] + e * e;
+      sums[p] = f == 0 ? e : sums[p] + e;
+    }
+  }
+  for (int p = 0; p < pixels; ++p) squares[p] -= sums[p] * sums[p] / cell.frames;
+  select_largest(squares, pixels, left_out);
+  double kept = 0;
+  for (int p = left_out; p < pixels; ++p) kept += squares[p];
+  return kept / ((pixels - left_out) * (cell.frames - 1.0));
 }
 
 /// One pixel of the cell through the frames of the group, each frame's mean taken out.
@@ -213,7 +268,6 @@ struct PixelSeries {
   int highest = 0;
   double others_mean = 0;   ///< of all frames but the highest
   double others_range = 0;
-  double squares = 0;       ///< about its own mean
 };
 
 template <class T>
@@ -232,7 +286,6 @@ PixelSeries pixel_series(const CellInput& cell, const Workspace<T>& work, const 
   bool begun = false;
   for (int f = 0; f < cell.frames; ++f) {
     const double d = out.deviation[f];
-    out.squares += (d - sum_all / cell.frames) * (d - sum_all / cell.frames);
     if (f == out.highest) continue;
     low = !begun || d < low ? d : low;
     high = !begun || d > high ? d : high;
@@ -264,33 +317,35 @@ void scan_pixels(const CellInput& cell, const Workspace<T>& work, const CellStat
 }
 
 /// Replaces hits; returns how many. A hit is a pixel whose highest frame stands above the mean of its other frames by more
-/// than the threshold in standard deviations of the cell without that pixel, while those others agree among themselves (a
-/// pixel that blinks is not a hit). Other hits, not yet found, may still be in the cell's variance, so the caller asks
-/// again until there are none.
+/// than the threshold, while those others agree among themselves: a pixel that blinks, or a hot one with noise of its
+/// own, is not a hit. Hits shift the frame means that all is judged by, so the caller asks again until there are none.
 template <class T>
 int replace_hits(const CellInput& cell, double squares, Workspace<T>& work, CellStatistics& out) {
   const int pixels = cell.width * cell.height;
   auto* above = work.above();
   auto* total = work.total();
   scan_pixels(cell, work, out, above, total);
-  int top = 0;
   const auto score = [&](int p) { return static_cast<double>(above[p]) * cell.frames - static_cast<double>(total[p]); };
   double top_score = score(0);
-  for (int p = 1; p < pixels; ++p)
-    if (score(p) > top_score) top_score = score(top = p);
-  const double limit = hit_limit<T>(cell, squares - pixel_series(cell, work, out, top).squares);
-  if (top_score <= limit - cell.frames) return 0;
+  for (int p = 1; p < pixels; ++p) top_score = score(p) > top_score ? score(p) : top_score;
+  // Most cells end here, at no cost. What rounding the means can hide is one code in `frames` frames; and the pixels
+  // that may be hits hold so much of the squares at the most.
+  const double frames = cell.frames;
+  const double most_squares = most_hits(pixels) * top_score * top_score / (frames * (frames - 1));
+  const double least = (squares - most_squares) / (pixels * (frames - 1));
+  if (top_score + frames <= hit_limit<T>(cell, 0.7 * least)) return 0;
 
-  // More than one pixel in fifty is not a rain of particles but a structure that one variance does not describe.
-  const int most = pixels / 50 + 1;
+  const double limit = hit_limit<T>(cell, trimmed_variance(cell, work, out));
+  const int most = most_hits(pixels);
   int found = 0;
-  int hit_pixel[kCellPixels / 50 + 1];
-  int hit_frame[kCellPixels / 50 + 1];
+  int hit_pixel[kCellPixels / 32 + 4];
+  int hit_frame[kCellPixels / 32 + 4];
   for (int p = 0; p < pixels; ++p) {
-    if (score(p) <= limit - cell.frames) continue;  // frames: what rounding the means can hide
+    if (score(p) + frames <= limit) continue;
     const PixelSeries pixel = pixel_series(cell, work, out, p);
-    if ((pixel.deviation[pixel.highest] - pixel.others_mean) * (cell.frames - 1) <= limit) continue;
-    if (pixel.others_range * std::sqrt(cell.frames * (cell.frames - 1.0)) > limit) continue;
+    const double distance = pixel.deviation[pixel.highest] - pixel.others_mean;
+    constexpr double kAgreement = 2.5;
+    if (distance * (frames - 1) <= limit || distance <= kAgreement * pixel.others_range) continue;
     if (found == most) return 0;
     hit_pixel[found] = p;
     hit_frame[found++] = pixel.highest;
@@ -373,9 +428,11 @@ void measure_cell(const CellInput& cell, CellTotals& totals, CellStatistics& out
     constexpr int kRounds = 8;  // each finds what the larger hits of the round before had hidden
     for (int round = 0; round < kRounds; ++round) {
       const double squares = temporal_squares(cell, out);
-      // No pixel can stand out by more than the cell's whole range, nor owe more than this to the squares.
-      const double most = spread * spread * (cell.frames - 1) / cell.frames;
-      if (spread * (cell.frames - 1) <= hit_limit<T>(cell, squares - most)) break;
+      // No pixel can stand out by more than the cell's whole range, nor pixels owe more than that to the squares.
+      const int pixels = cell.width * cell.height;
+      const double most = most_hits(pixels) * spread * spread * (cell.frames - 1) / cell.frames;
+      const double least = 0.7 * (squares - most) / (pixels * (cell.frames - 1.0));
+      if (spread * (cell.frames - 1) <= hit_limit<T>(cell, least)) break;
       if (replace_hits(cell, squares, work, out) == 0) break;
       sums_and_gram(cell, chunk, work, out);
     }

@@ -26,7 +26,9 @@ Quantity known(std::string name, const std::string& region, const Estimate& esti
     constexpr double kMany = std::numeric_limits<double>::infinity();
     const std::array parts{Contribution{estimate.statistical_uncertainty, *estimate.degrees_of_freedom},
                            Contribution{estimate.common_uncertainty, kMany}};
-    q.degrees_of_freedom = effective_degrees_of_freedom(parts);
+    const double effective = effective_degrees_of_freedom(parts);
+    constexpr double kAsGoodAsMany = 1e6;  // Student's t differs from the normal distribution by 1e-6 there
+    if (effective < kAsGoodAsMany) q.degrees_of_freedom = effective;
   }
   const double half = coverage_factor(kCoverage, q.degrees_of_freedom) * *q.standard_uncertainty;
   q.low95 = estimate.value - half;

@@ -8,6 +8,7 @@
 
 #include "base/text.h"
 #include "formats/acquisition_time.h"
+#include "formats/fits_tiles.h"
 #include "formats/frame_limits.h"
 
 namespace evenfield {
@@ -15,6 +16,7 @@ namespace evenfield {
 namespace {
 
 constexpr int kMaxAxes = 9;
+constexpr double kMaxOverhang = 1 << 24;  // pixels of a tile that is larger than its image
 
 /// Reads the header of the current part of a handle.
 class ImageReader {
@@ -157,19 +159,27 @@ class ImageReader {
     if (*name != "RICE_1" && *name != "RICE_ONE" && *name != "GZIP_1" && *name != "GZIP_2") {
       return wrong("ZCMPTYPE", "'" + *name + "'", "RICE_1, GZIP_1 or GZIP_2");
     }
+    image_.gzip = name->starts_with("GZIP");
+    image_.data_bytes = part_.data_bytes;
+    const double pixels =
+        static_cast<double>(stored_bytes()) / (std::abs(bits_) / 8) * static_cast<double>(image_.planes);
+    double tile_pixels = 1.0;
     for (std::size_t axis = 0; axis < image_.axes.size(); ++axis) {
       const std::string key = "ZTILE" + std::to_string(axis + 1);
-      const auto length = number(key, 1.0);
+      // FITS Standard 4.0, section 10.1.1: without the keyword, tiles are rows.
+      const auto length = number(key, axis == 0 ? static_cast<double>(image_.axes[0]) : 1.0);
       if (!length) return length.error();
-      // A tile may be larger than the image; one that is out of all proportion would only cost memory.
-      if (*length < 1.0 || *length > static_cast<double>(kMaxFrameSide)) {
-        return wrong(key, to_text(*length), "1 to " + std::to_string(kMaxFrameSide));
+      tile_pixels *= *length;
+      // Tiles may overhang the image; ones out of all proportion would only cost memory.
+      if (*length < 1.0 || *length != std::floor(*length) || tile_pixels > std::max(pixels, kMaxOverhang)) {
+        return wrong(key, to_text(*length), "1 or more, and tiles no larger than the image");
       }
+      image_.tile.push_back(static_cast<long>(*length));
     }
-    const double pixels = static_cast<double>(stored_bytes()) * static_cast<double>(image_.planes);
-    if (pixels > static_cast<double>(part_.data_bytes) * static_cast<double>(kMaxDeflateRatio)) {
+    const double bytes = static_cast<double>(stored_bytes()) * static_cast<double>(image_.planes);
+    if (bytes > static_cast<double>(part_.data_bytes) * static_cast<double>(kMaxDeflateRatio)) {
       return wrong("ZNAXIS", std::to_string(part_.data_bytes) + " bytes of packed data",
-                   "enough for " + to_text(pixels) + " bytes");
+                   "enough for " + to_text(bytes) + " bytes");
     }
     return Done{};
   }
@@ -255,6 +265,11 @@ Result<FitsImages> read_fits_images(const std::filesystem::path& path,
 Status read_fits_plane(fitsfile* handle, const FitsImage& image, std::uint64_t plane, void* pixels) {
   int status = 0;
   fits_movabs_hdu(handle, image.hdu, nullptr, &status);
+  if (status != 0) return Error{Errc::input, {}, "cannot be decoded: " + fits_words(status)};
+  if (!image.tile.empty()) {
+    Status whole = check_gzip_tiles(handle, image, plane);
+    if (!whole) return whole;
+  }
   std::vector<long> first(image.axes.size(), 1);
   std::vector<long> last = image.axes;
   std::vector<long> step(image.axes.size(), 1);

@@ -24,6 +24,9 @@ struct FitsImage {
   bool raw = false;          ///< planes lie in the file as they are, from data_offset on
   std::uint64_t data_offset = 0;
   RawEncoding encoding;
+  std::vector<long> tile;        ///< ZTILEn of a compressed image; else empty
+  bool gzip = false;             ///< compressed with gzip
+  std::uint64_t data_bytes = 0;  ///< of the part, padding left out
 };
 
 struct FitsImages {

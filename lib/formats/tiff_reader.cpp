@@ -3,6 +3,7 @@
 #include <tiffio.h>
 
 #include <algorithm>
+#include <array>
 #include <cstring>
 #include <vector>
 
@@ -26,6 +27,31 @@ Error damaged(const std::filesystem::path& path,
               const std::string& what) {
   const std::string& said = handle.errors().empty() ? handle.warnings() : handle.errors();
   return Error{Errc::input, {path, {}, page, {}}, what + (said.empty() ? "" : ": " + said)};
+}
+
+/// libtiff takes a file that ends inside the last directory's link to the next page for one that ends after
+/// that page; the pages behind it would be missed. TIFF 6.0, section 2: a count of entries, the entries, the
+/// link.
+Status check_last_link(const DiskFile& bytes, TIFF* tiff, int page) {
+  std::array<unsigned char, 8> count{};
+  Status read = bytes.read(0, count.data(), 4);
+  if (!read) return read;
+  const bool big_endian = count[0] == 'M';
+  const bool big_tiff = count[big_endian ? 3 : 2] == 43;
+  const std::uint64_t directory = TIFFCurrentDirOffset(tiff);
+  const std::size_t width = big_tiff ? 8 : 2;
+  read = bytes.read(directory, count.data(), width);
+  if (!read) return read;
+  std::uint64_t entries = 0;
+  for (std::size_t i = 0; i < width; ++i) entries = entries << 8U | count[big_endian ? i : width - 1 - i];
+  const std::uint64_t end = directory + (big_tiff ? 8 + 20 * entries + 8 : 2 + 12 * entries + 4);
+  if (end > bytes.size()) {
+    return Error{
+        Errc::input,
+        {bytes.path(), {}, page, {}},
+        "found " + std::to_string(bytes.size()) + " bytes, expected at least " + std::to_string(end)};
+  }
+  return Done{};
 }
 
 /// Frames that follow the one page of an ImageJ stack, without pages of their own.
@@ -190,7 +216,11 @@ Result<FrameFile> inspect_tiff(const std::filesystem::path& path) {
         if (!planes) return planes.error();
       }
     }
-    if (TIFFLastDirectory(tiff) != 0) break;
+    if (TIFFLastDirectory(tiff) != 0) {
+      const Status whole = check_last_link(*bytes, tiff, number);
+      if (!whole) return whole.error();
+      break;
+    }
     handle->forget();
     if (TIFFReadDirectory(tiff) == 0) {
       return damaged(path, static_cast<int>(file.pages.size()) + 1, *handle,

@@ -272,6 +272,11 @@ void read_all_series(TomlTable& root, Scene& scene) {
       table.fail("kind", "found a flat in a scene without [light], expected that table");
     if (scene.series.size() <= kMostSeries) read_series(std::move(table), scene);
   }
+  std::int64_t frames = 0;
+  for (const SceneSeries& series : scene.series) frames += series.frames;
+  if (frames > kMostFramesInAll)
+    root.fail("series", "found " + std::to_string(frames) + " frames, expected at most " +
+                            std::to_string(kMostFramesInAll) + " in all");
 }
 
 void read_output(TomlTable table, Scene& scene, std::optional<WriteFormat> format) {

@@ -118,6 +118,24 @@ void add_saturation(const SceneCamera& camera, RegionTruth& truth) {
   truth.saturation_capacity_e = truth.saturation_dn / truth.conversion_gain_dn_per_e;
 }
 
+/// The signal S at which S + z x spread(S) reaches the top code, found by bisection: the sum rises with S.
+std::optional<double> saturation_onset_dn(const SceneCamera& camera, const RegionTruth& truth) {
+  if (truth.saturation_limit == SaturationLimit::well || camera.curvature > 0.0) return std::nullopt;
+  constexpr double kQuantile = 2.878162;  // of the normal distribution, 0.2 % above
+  const double gain = truth.conversion_gain_dn_per_e;
+  const double dark_e = std::hypot(truth.read_noise_e, truth.dsnu_e);
+  // A code rounds up to the top from half a step below it.
+  const double top_dn = truth.saturation_dn - std::ldexp(0.5, camera.left_shift);
+  double low = 0.0, high = truth.saturation_dn;
+  for (int step = 0; step < 60; ++step) {
+    const double signal_dn = (low + high) / 2.0, signal_e = signal_dn / gain;
+    const double photon_e = std::sqrt(signal_e), pattern_e = truth.prnu_percent / 100.0 * signal_e;
+    const double spread_dn = gain * std::hypot(dark_e, photon_e, pattern_e);
+    (signal_dn + kQuantile * spread_dn < top_dn ? low : high) = signal_dn;
+  }
+  return (low + high) / 2.0;
+}
+
 }  // namespace
 
 std::vector<RegionTruth> region_truths(const Sensor& sensor) {
@@ -135,6 +153,7 @@ std::vector<RegionTruth> region_truths(const Sensor& sensor) {
     add_noise(sensor, truth);
     add_dark_current(sensor, truth);
     add_saturation(scene.camera, truth);
+    truth.saturation_onset_dn = saturation_onset_dn(scene.camera, truth);
     truths.push_back(std::move(truth));
   }
   return truths;

@@ -6,6 +6,7 @@
 /// are in none of them.
 
 #include <cstddef>
+#include <optional>
 #include <string>
 #include <vector>
 
@@ -38,6 +39,9 @@ struct RegionTruth {
   double dark_current_spread_e_per_s = 0.0;
   double saturation_dn = 0.0;          ///< signal above the dark offset at which the mean pixel saturates
   double saturation_capacity_e = 0.0;  ///< that in electrons of K
+  /// Mean signal under even light at which 0.2 % of the pixels stand at the top code: below saturation_dn by
+  /// 2.88 standard deviations of noise and patterns. Absent where the well limits or the signal is curved.
+  std::optional<double> saturation_onset_dn;
   SaturationLimit saturation_limit = SaturationLimit::converter;
   std::size_t hot_pixel_count = 0;  ///< pixels that were given more dark current, however little
 };

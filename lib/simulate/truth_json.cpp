@@ -109,6 +109,7 @@ Json region_json(const RegionTruth& truth, const SceneCamera& camera) {
           {"dark_current_spread_e_per_s", truth.dark_current_spread_e_per_s},
           {"saturation_dn", truth.saturation_dn},
           {"saturation_capacity_e", truth.saturation_capacity_e},
+          {"saturation_onset_dn", or_null(truth.saturation_onset_dn)},
           {"saturation_limit", truth.saturation_limit == SaturationLimit::well ? "well" : "converter"},
           {"hot_pixel_count", truth.hot_pixel_count}};
 }

@@ -24,7 +24,7 @@ TEST_CASE("times of headers become RFC 3339, and what is no time is left out") {
                       {"2026-11-24T09:30:00 x", ""},
                       {"", ""}};
   for (const Row& row : fits) {
-    CAPTURE(row.text);
+    CAPTURE(std::string(row.text));
     CHECK(time_from_fits(row.text).value_or("") == row.expected);
   }
   // TIFF 6.0, section 8, DateTime.
@@ -34,7 +34,7 @@ TEST_CASE("times of headers become RFC 3339, and what is no time is left out") {
                       {"2026:00:24 09:30:00", ""},
                       {"2026:11:24 09:30:00.5", ""}};
   for (const Row& row : tiff) {
-    CAPTURE(row.text);
+    CAPTURE(std::string(row.text));
     CHECK(time_from_tiff(row.text).value_or("") == row.expected);
   }
 }

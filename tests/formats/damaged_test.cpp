@@ -45,7 +45,7 @@ TEST_CASE("a file cut off anywhere is refused, or whole in all that it still has
   const FrameShape shape{20, 18, PixelType::u16};
   const auto stack = made_up_stack(shape, 3);
   for (const Kind& kind : kKinds) {
-    CAPTURE(kind.name);
+    CAPTURE(std::string(kind.name));
     const bool fits = kind.options.format == WriteFormat::fits;
     REQUIRE(write_stack(folder / "whole", shape, stack, kind.options));
     const Bytes whole = read_bytes(folder / "whole");
@@ -92,7 +92,7 @@ TEST_CASE("bytes changed anywhere never crash a reader") {
   int refused = 0;
   int tried = 0;
   for (const Kind& kind : kKinds) {
-    CAPTURE(kind.name);
+    CAPTURE(std::string(kind.name));
     REQUIRE(write_stack(folder / "whole", shape, stack, kind.options));
     const Bytes whole = read_bytes(folder / "whole");
     for (int round = 0; round < 150; ++round, ++tried) {
@@ -121,7 +121,7 @@ TEST_CASE("what TIFF pages we do not read is refused with tag, found and expecte
   CHECK(has(with(258, 12), "page 1, BitsPerSample: found 12, expected 8, 16 or 32"));
   CHECK(has(with(259, 7), "page 1, Compression: found 7, expected"));
   CHECK(has(with(262, 0), "page 1, PhotometricInterpretation: found 0 (white is zero), expected 1"));
-  CHECK(has(with(262, 3), "page 1, PhotometricInterpretation: found 3"));
+  CHECK(has(with(262, 32803), "page 1, PhotometricInterpretation: found 32803, expected 1"));
   CHECK(has(with(266, 2), "page 1, FillOrder: found 2, expected 1"));
   CHECK(has(with(339, 3), "page 1, BitsPerSample: found 16 of a float, expected 32 or 64"));
   CHECK(has(with(339, 6), "page 1, SampleFormat: found 6, expected"));
@@ -236,8 +236,9 @@ TEST_CASE("a file that changes after it was inspected gives an error and no cras
   const FrameShape other{40, 36, PixelType::u16};
   const auto path = folder / "a";
   for (const Kind& before : kKinds) {
-    CAPTURE(before.name);
-    REQUIRE(write_stack(path, shape, made_up_stack(shape, 3), before.options));
+    CAPTURE(std::string(before.name));
+    const auto stack = made_up_stack(shape, 3);
+    REQUIRE(write_stack(path, shape, stack, before.options));
     const auto file = inspect(path);
     REQUIRE(file);
     // Cut off under an open decoder, and before it is opened.
@@ -245,11 +246,12 @@ TEST_CASE("a file that changes after it was inspected gives an error and no cras
     REQUIRE(decoder);
     std::filesystem::resize_file(path, 100);
     Bytes frame(frame_bytes(shape));
-    CHECK_FALSE((*decoder)->decode(3, frame.data()));
+    // CFITSIO may hold the bytes of a small file already; then the frame is right.
+    if ((*decoder)->decode(3, frame.data())) CHECK((frame == stack[2]));
     CHECK_FALSE(decode_all(*file));
     // Another file under the same name, with frames of another size.
     for (const Kind& after : kKinds) {
-      CAPTURE(after.name);
+      CAPTURE(std::string(after.name));
       REQUIRE(write_stack(path, other, made_up_stack(other, 1), after.options));
       const auto frames = decode_all(*file);
       // Extents of the old file may lie inside the new one; then bytes are read that mean nothing, but are

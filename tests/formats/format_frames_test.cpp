@@ -63,7 +63,7 @@ constexpr Row kRows[] = {
 TEST_CASE("frames of other people's programs have the size, type and statistics that other readers find") {
   if (absent()) return;
   for (const Row& row : kRows) {
-    CAPTURE(row.name);
+    CAPTURE(std::string(row.name));
     const auto file = inspect(kFolder / row.name);
     REQUIRE_MESSAGE(file, to_line(file.error()));
     CHECK(file->pages.size() == row.pages);

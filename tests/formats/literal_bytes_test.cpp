@@ -137,7 +137,7 @@ TEST_CASE("a FITS frame of the writer holds the bytes that the standard asks for
        {"SIMPLE  =                    T", "BITPIX  =                   16", "NAXIS   =                    2",
         "NAXIS1  =                    2", "NAXIS2  =                    1", "BZERO   =                32768",
         "BSCALE  =                    1"}) {
-    CAPTURE(card);
+    CAPTURE(std::string(card));
     const std::size_t at = text.find(card);
     CHECK(at != std::string::npos);
     CHECK(at % 80 == 0);

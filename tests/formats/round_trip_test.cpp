@@ -49,8 +49,8 @@ TEST_CASE("every TIFF type, layout, compression, byte order and size reads back 
           options.tile_size = layout.tile_size;
           options.big_endian = (kind & 1) != 0;
           options.big_tiff = (kind & 2) != 0;
-          CAPTURE(name_of(type));
-          CAPTURE(layout.name);
+          CAPTURE(std::string(name_of(type)));
+          CAPTURE(std::string(layout.name));
           CAPTURE(static_cast<int>(compression));
           CAPTURE(kind);
           check_round_trip(folder, type, options,
@@ -71,7 +71,7 @@ TEST_CASE("every FITS type reads back bit for bit as cube, as extensions, and ti
         options.format = WriteFormat::fits;
         options.compression = compression;
         options.extensions = extensions;
-        CAPTURE(name_of(type));
+        CAPTURE(std::string(name_of(type)));
         CAPTURE(static_cast<int>(compression));
         CAPTURE(extensions);
         check_round_trip(folder, type, options, compression == WriteCompression::none);

@@ -142,6 +142,9 @@ TEST_CASE("A bad scene is one line with file, line and key, what was found and w
       {changed("exposure_s = 0.01", "exposures_s = [1e-3]\nexposure_s = 1"), "series[1].exposures_s",
        "beside"},
       {changed("frames = 2", "frames = 0"), "series[1].frames", "from 1 to 100000"},
+      {changed("exposure_s = 0.01\nframes = 2",
+               "lights = [1, 2, 3, 4, 5, 6, 7, 8, 9, 10, 11]\nexposure_s = 0\nframes = 100000"),
+       "series", "found 1100004 frames"},
       {changed("kind = \"bias\"", "kind = \"bias\"\nexposure_s = 0.1"), "series[2].exposure_s", "a bias is"},
       {changed("kind = \"bias\"", "kind = \"bias\"\nlight = 1"), "series[2].light", "flats only"},
       {changed("kind = \"bias\"", "kind = \"bios\""), "series[2].kind", "flat, dark or bias"},
@@ -173,7 +176,7 @@ TEST_CASE("A bad scene is one line with file, line and key, what was found and w
 TEST_CASE("The sample scene is read") {
   const auto scene = read_scene(EVENFIELD_SOURCE_DIR "/sample_frames/scene.toml");
   REQUIRE(scene);
-  CHECK(scene->series.size() == 18);
+  CHECK(scene->series.size() == 20);
 }
 
 }  // namespace

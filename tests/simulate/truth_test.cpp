@@ -2,6 +2,7 @@
 
 #include <doctest/doctest.h>
 
+#include <algorithm>
 #include <cmath>
 
 #include "scenes.h"
@@ -86,6 +87,26 @@ TEST_CASE("Saturation is the converter's or the well's, whichever comes first") 
   truth = region_truths(realize(scene)).front();
   CHECK(truth.saturation_limit == SaturationLimit::well);
   CHECK(truth.saturation_dn == doctest::Approx(0.5 * 6000.0 * 0.95));
+}
+
+TEST_CASE("At the onset of saturation 0.2 % of the pixels stand at the top code") {
+  Scene scene = even_scene(100.0, 512, 400);
+  scene.camera.bit_depth = 12;
+  scene.camera.gain_dn_per_e = 0.46;
+  scene.camera.offset_dn = 100.0;
+  scene.camera.read_noise_e = 3.0;
+  scene.camera.dsnu_e = 5.0;
+  scene.camera.prnu_percent = 0.8;
+  const auto onset = region_truths(realize(scene)).front().saturation_onset_dn;
+  REQUIRE(onset);
+  scene.light.electrons_per_s = *onset / 0.46;
+  const auto codes = expose(realize(scene), 0, 0);
+  const auto at_top = static_cast<double>(std::count(codes.begin(), codes.end(), std::uint16_t{4095}));
+  // Binomial, 409.6 expected; and 4 % for the skewness of Poisson numbers, which the normal quantile leaves
+  // out: (z^2 - 1) / 6 x skewness x density / share = 1.2 x 0.009 x 3.17.
+  CHECK(std::abs(at_top - 409.6) < 4.0 * std::sqrt(409.6) + 0.04 * 409.6);
+  scene.camera.full_well_e = 3000.0;
+  CHECK(!region_truths(realize(scene)).front().saturation_onset_dn);
 }
 
 TEST_CASE("DN of the truth are those of the file") {
