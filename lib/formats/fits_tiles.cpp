@@ -49,7 +49,7 @@ Status check_gzip_tiles(fitsfile* handle, const FitsImage& image, std::uint64_t 
       stride = 1;
       continue;
     }
-    layer += stride * static_cast<LONGLONG>(plane % static_cast<std::uint64_t>(length)) / tile;
+    layer += stride * (static_cast<LONGLONG>(plane % static_cast<std::uint64_t>(length)) / tile);
     plane /= static_cast<std::uint64_t>(length);
     stride *= count;
   }

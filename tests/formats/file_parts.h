@@ -112,7 +112,7 @@ inline Bytes gzipped(const Bytes& bytes, int level = 6) {
   state.next_out = reinterpret_cast<Bytef*>(out.data());
   state.avail_out = static_cast<uInt>(out.size());
   deflate(&state, Z_FINISH);
-  out.resize(out.size() - state.avail_out);
+  out.erase(out.end() - static_cast<std::ptrdiff_t>(state.avail_out), out.end());
   deflateEnd(&state);
   return out;
 }
