@@ -85,6 +85,9 @@ Result<Characterization> measure(const std::filesystem::path& session_file, cons
   const auto opened = read_session(session_file, options.threads, options.camera_file);
   if (!opened) return opened.error();
   const Session& session = opened->session;
+  if (session.analysis.gain_model == "curved")
+    return Error{Errc::input, {session_file, {}, {}, "analysis.gain_model"},
+                 "found \"curved\", expected auto or line: this version fits no curved model"};
   AnalysisInput input = begin_input(session);
   std::vector<Rect> rects;
   for (const Region& region : input.regions) rects.push_back(region.rect);
@@ -99,6 +102,10 @@ Result<Characterization> measure(const std::filesystem::path& session_file, cons
   if (options.progress) options.progress(done, done);
 
   Characterization out = analyse(input);
+  for (const SessionRegion& region : session.regions)
+    for (Quantity& q : out.quantities)
+      if (region.overscan && q.region == region.name && q.name == "dark_offset_dn")
+        q.note += std::string(q.note.empty() ? "" : "; ") + "the region's overscan is not used by this version";
   out.program_version = program_version();
   out.created = now();
   out.acquired = session.acquired;

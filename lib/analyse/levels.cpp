@@ -163,7 +163,12 @@ double RegionLevels::mean_uncertainty(std::size_t series) const {
     const double signal = level == levels_.end() ? s.mean : level->signal;
     between += flicker_ * flicker_ * signal * signal;
   }
-  return std::sqrt(s.variance.value_or(0.0) / (s.pixels * s.frames) + between / s.frames);
+  // Of a single frame the spread inside blocks bounds the noise from above.
+  double noise = s.variance.value_or(0.0);
+  if (!s.variance)
+    for (std::size_t b = 0; b < s.block_spread.size(); ++b)
+      noise += s.block_pixels[b] * s.block_spread[b] * s.block_spread[b] / s.pixels;
+  return std::sqrt(noise / (s.pixels * s.frames) + between / s.frames);
 }
 
 /// Signal of the block where `kSaturatedShare` of its pixels show the top code, infinite if none of the levels gets there.
@@ -191,16 +196,18 @@ double RegionLevels::saturation_signal(std::size_t block, const std::vector<cons
     const double lower = lower_flat.block_mean[block] - lower_dark;
     const double dof = lower_flat.block_dof[block];
     const double temporal = dof > 0 ? lower_flat.block_squares[block] / dof : 0.0;
-    const double spread = lower_flat.block_spread[block];
+    // The mean frame's spread less the noise that is left in it.
+    const double spread_square = std::max(
+        0.0, lower_flat.block_spread[block] * lower_flat.block_spread[block] - temporal / lower_flat.frames);
     const double z = normal_quantile(1 - kSaturatedShare);
     double signal = lower;
     for (int round = 0; round < 20 && lower > 0; ++round) {
       const double ratio = std::max(0.0, signal / lower);
-      noise = std::sqrt(temporal * ratio + spread * spread * ratio * ratio);
+      noise = std::sqrt(temporal * ratio + spread_square * ratio * ratio);
       signal = top - z * noise;
     }
     if (signal >= lower && signal <= (share < 0.5 ? upper : top)) return signal;
-    noise = std::sqrt(temporal + spread * spread);
+    noise = std::sqrt(temporal + spread_square);
     const double lower_share = share_at(lower_flat.block_highest[block], *codes_.top_code,
                                         lower_flat.block_pixels[block] * lower_flat.frames);
     return lower + (kSaturatedShare - lower_share) / (share - lower_share) * (upper - lower);

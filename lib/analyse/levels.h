@@ -67,7 +67,8 @@ class RegionLevels {
   /// Frame-to-frame scatter of the dark level [DN], likewise over all darks.
   double offset_jitter_dn() const { return jitter_; }
   double offset_jitter_dof() const { return jitter_dof_; }
-  /// Standard uncertainty of a series' mean: temporal noise, and the scatter of light or offset between frames.
+  /// Standard uncertainty of a series' mean: temporal noise (of a single frame an upper bound), and the scatter of light or
+  /// offset between frames as far as any series of several frames shows it.
   double mean_uncertainty(std::size_t series) const;
 
  private:

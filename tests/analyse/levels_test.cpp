@@ -87,3 +87,18 @@ TEST_CASE("copies of frames, darks without noise and missing exposures are findi
   CHECK(quantity(result, "read_noise_dn").note.find("no noise at all") != std::string::npos);
   CHECK(!quantity(result, "linearity_error_percent").value);
 }
+
+TEST_CASE("levels of one frame each still give a linearity error, with an uncertainty that is not zero") {
+  Scene scene = camera();
+  add_series(scene, SeriesKind::bias, 0, 1);
+  for (const double t : {0.05, 0.1, 0.2, 0.3, 0.4, 0.5}) add_series(scene, SeriesKind::flat, t, 1);
+  const Measurement m = measure_scene(scene);
+  const Quantity& error = quantity(m.result, "linearity_error_percent");
+  REQUIRE(error.value);
+  CHECK(*error.standard_uncertainty > 0);
+  CHECK(*error.value < 0.2);
+  CHECK(!quantity(m.result, "conversion_gain_dn_per_e").value);
+  CHECK(!quantity(m.result, "dsnu_dn").value);
+  for (const SeriesResult& s : m.result.series) CHECK(s.mean_uncertainty_dn > 0);
+  CHECK(has(m.result, "too-few-frames", Severity::problem));
+}

@@ -40,6 +40,8 @@ class TestFolder {
 using Bytes = std::vector<char>;
 
 inline void write_bytes(const std::filesystem::path& path, const Bytes& bytes) {
+  // A new file each time: some file systems wait for the disk when an old one is emptied and written again.
+  std::filesystem::remove(path);
   std::ofstream(path, std::ios::binary).write(bytes.data(), static_cast<std::streamsize>(bytes.size()));
 }
 

@@ -1,3 +1,4 @@
+#include "base/parallel.h"
 #include "frames_on_disk.h"
 
 using namespace evenfield;
@@ -114,6 +115,31 @@ TEST_CASE("frames can be decoded in any order, and again") {
       CHECK((frame == stack[static_cast<std::size_t>(page - 1)]));
     }
     for (const int page : {0, -1, 10}) CHECK_FALSE((*decoder)->decode(page, frame.data()));
+  }
+}
+
+TEST_CASE("decoders of one file work in parallel, each in its own thread") {
+  const TestFolder folder;
+  const FrameShape shape{90, 70, PixelType::u16};
+  const auto stack = made_up_stack(shape, 16);
+  const WriteOptions ways[] = {
+      {.compression = WriteCompression::deflate, .tile_size = 32},
+      {.format = WriteFormat::fits, .compression = WriteCompression::rice},
+      {.format = WriteFormat::fits, .compression = WriteCompression::gzip, .extensions = true}};
+  for (const WriteOptions& options : ways) {
+    REQUIRE(write_stack(folder / "a", shape, stack, options));
+    const auto file = inspect(folder / "a");
+    REQUIRE(file);
+    std::vector<Bytes> frames(stack.size(), Bytes(frame_bytes(shape)));
+    for (int round = 0; round < 5; ++round) {
+      const Status done = for_each_item(static_cast<int>(frames.size()), 4, [&](int item, int) -> Status {
+        auto decoder = open_decoder(*file);
+        if (!decoder) return decoder.error();
+        return (*decoder)->decode(item + 1, frames[static_cast<std::size_t>(item)].data());
+      });
+      REQUIRE_MESSAGE(done, to_line(done.error()));
+      CHECK((frames == stack));
+    }
   }
 }
 
