@@ -72,6 +72,19 @@ int frame_not_finite(const CellInput& cell) {
   return -1;
 }
 
+/// Whether the cell holds whole numbers, also where their type is a floating-point one: the same frames in another container
+/// are then treated alike.
+template <class T>
+bool holds_whole_codes(const CellInput& cell) {
+  if constexpr (std::is_floating_point_v<T>) {
+    const auto* pixels = static_cast<const T*>(cell.pixels[0]);
+    for (int y = 0; y < cell.height; ++y)
+      for (int x = 0; x < cell.width; ++x)
+        if (pixels[y * cell.stride + x] != std::floor(pixels[y * cell.stride + x])) return false;
+  }
+  return true;
+}
+
 template <class T>
 void count_extremes(const CellInput& cell, Range<T> range, CellStatistics& out) {
   std::int64_t low_count = 0;
@@ -200,11 +213,10 @@ double temporal_squares(const CellInput& cell, const CellStatistics& s) {
 }
 
 /// Limit for frames x (highest deviation) - (sum of deviations), which is (frames - 1) times the distance of the highest
-/// frame from the mean of the others. Two codes more for integers: coarse steps are no hits.
-template <class T>
-double hit_limit(const CellInput& cell, double variance) {
+/// frame from the mean of the others. Two codes more for whole numbers: coarse steps are no hits.
+double hit_limit(const CellInput& cell, bool whole_codes, double variance) {
   return cell.hit_threshold * std::sqrt(variance > 0 ? variance * cell.frames * (cell.frames - 1.0) : 0.0) +
-         (std::is_integral_v<T> ? 2.0 * (cell.frames - 1.0) : 0.0);
+         (whole_codes ? 2.0 * (cell.frames - 1.0) : 0.0);
 }
 
 /// So many pixels of a cell may be hits; more are a structure that one variance does not describe.
@@ -320,7 +332,7 @@ void scan_pixels(const CellInput& cell, const Workspace<T>& work, const CellStat
 /// than the threshold, while those others agree among themselves: a pixel that blinks, or a hot one with noise of its
 /// own, is not a hit. Hits shift the frame means that all is judged by, so the caller asks again until there are none.
 template <class T>
-int replace_hits(const CellInput& cell, double squares, Workspace<T>& work, CellStatistics& out) {
+int replace_hits(const CellInput& cell, bool whole_codes, double squares, Workspace<T>& work, CellStatistics& out) {
   const int pixels = cell.width * cell.height;
   auto* above = work.above();
   auto* total = work.total();
@@ -333,9 +345,9 @@ int replace_hits(const CellInput& cell, double squares, Workspace<T>& work, Cell
   const double frames = cell.frames;
   const double most_squares = most_hits(pixels) * top_score * top_score / (frames * (frames - 1));
   const double least = (squares - most_squares) / (pixels * (frames - 1));
-  if (top_score + frames <= hit_limit<T>(cell, 0.7 * least)) return 0;
+  if (top_score + frames <= hit_limit(cell, whole_codes, 0.7 * least)) return 0;
 
-  const double limit = hit_limit<T>(cell, trimmed_variance(cell, work, out));
+  const double limit = hit_limit(cell, whole_codes, trimmed_variance(cell, work, out));
   const int most = most_hits(pixels);
   int found = 0;
   int hit_pixel[kCellPixels / 32 + 4];
@@ -374,7 +386,7 @@ int replace_hits(const CellInput& cell, double squares, Workspace<T>& work, Cell
       const double whole = std::floor(value + 0.5);
       stored = static_cast<std::int16_t>(whole < -32768 ? -32768 : whole > 32767 ? 32767 : whole);
     } else {
-      stored = value;
+      stored = whole_codes ? std::floor(value + out.centre + 0.5) - out.centre : value;
     }
     ++out.hits[static_cast<std::size_t>(hit_frame[i])];
   }
@@ -425,6 +437,7 @@ void measure_cell(const CellInput& cell, CellTotals& totals, CellStatistics& out
   sums_and_gram(cell, chunk, work, out);
   if (cell.hit_threshold > 0 && cell.frames > 1) {
     const double spread = static_cast<double>(range.high) - static_cast<double>(range.low);
+    const bool whole_codes = holds_whole_codes<T>(cell);
     constexpr int kRounds = 8;  // each finds what the larger hits of the round before had hidden
     for (int round = 0; round < kRounds; ++round) {
       const double squares = temporal_squares(cell, out);
@@ -432,8 +445,8 @@ void measure_cell(const CellInput& cell, CellTotals& totals, CellStatistics& out
       const int pixels = cell.width * cell.height;
       const double most = most_hits(pixels) * spread * spread * (cell.frames - 1) / cell.frames;
       const double least = 0.7 * (squares - most) / (pixels * (cell.frames - 1.0));
-      if (spread * (cell.frames - 1) <= hit_limit<T>(cell, least)) break;
-      if (replace_hits(cell, squares, work, out) == 0) break;
+      if (spread * (cell.frames - 1) <= hit_limit(cell, whole_codes, least)) break;
+      if (replace_hits(cell, whole_codes, squares, work, out) == 0) break;
       sums_and_gram(cell, chunk, work, out);
     }
   }
