@@ -3,6 +3,7 @@
 #include <algorithm>
 #include <array>
 #include <cmath>
+#include <limits>
 #include <map>
 #include <memory>
 #include <mutex>
@@ -29,6 +30,7 @@ struct BandResult {
 struct BandBuffers {
   std::vector<std::byte> rows;      ///< [frame of the group][row][column]
   std::vector<CellTotals> totals;   ///< [cell]
+  std::vector<std::vector<std::pair<double, double>>> known;  ///< [region][block] lowest and highest code seen by this thread
 };
 
 class Accumulator {
@@ -126,9 +128,14 @@ Status Accumulator::measure(int band_index, BandBuffers& buffers, BandResult& ou
         input.pixels[static_cast<std::size_t>(f)] = buffers.rows.data() + frame_bytes * static_cast<std::size_t>(f) +
                                                     pixel_bytes * static_cast<std::size_t>(cell.x);
       CellStatistics& statistics = out.cells[c * sizes_.size() + g];
+      auto& [lowest, highest] = buffers.known[static_cast<std::size_t>(cell.region)][static_cast<std::size_t>(cell.block)];
+      input.known_lowest = lowest;
+      input.known_highest = highest;
       kernels_.measure(input, buffers.totals[c], statistics);
       if (statistics.bad_frame >= 0) return frames_.error_at(first + statistics.bad_frame,
                                                              "found a pixel that is not a finite number, expected finite pixels");
+      lowest = std::min(lowest, statistics.lowest.code);
+      highest = std::max(highest, statistics.highest.code);
     }
     first += sizes_[g];
   }
@@ -248,6 +255,11 @@ Result<SeriesStatistics> accumulate(const FrameStack& frames, const Geometry& ge
   Accumulator accumulator(frames, geometry, options);
   const auto workers = static_cast<std::size_t>(std::max(1, options.threads));
   std::vector<BandBuffers> buffers(workers);
+  for (BandBuffers& buffer : buffers)
+    for (const BlockGrid& grid : geometry.grids) {
+      constexpr double kNone = std::numeric_limits<double>::infinity();
+      buffer.known.emplace_back(static_cast<std::size_t>(grid.columns * grid.rows), std::pair(kNone, -kNone));
+    }
 
   // Results that came before their turn wait here; as bands are handed out in order, there are few.
   std::mutex guard;

@@ -4,6 +4,7 @@
 #include <array>
 #include <cstddef>
 #include <cstdint>
+#include <limits>
 
 #include "accumulate/geometry.h"
 #include "accumulate/series_statistics.h"
@@ -22,6 +23,9 @@ struct CellInput {
   int height = 0;
   bool first_group = true;       ///< the totals are begun, not continued
   double hit_threshold = 0;      ///< in standard deviations; 0: hits are not looked for
+  /// Codes that occur elsewhere in the block; extremes inside them are not counted.
+  double known_lowest = std::numeric_limits<double>::infinity();
+  double known_highest = -std::numeric_limits<double>::infinity();
 };
 
 struct CellStatistics {
@@ -30,13 +34,14 @@ struct CellStatistics {
   std::array<double, pair_count(kGroupFrames)> gram{};
   std::array<double, kGroupFrames * std::size_t{kCellRows}> row_sums{};  ///< [frame][row] of y - centre
   std::array<std::int32_t, kGroupFrames> hits{};
-  Extreme lowest, highest;
+  Extreme lowest, highest;  ///< count 0: not counted, since the block goes further
   int bad_frame = -1;  ///< a frame with a pixel that is not a finite number; nothing else is valid then
 };
 
 /// Sums over the frames seen so far, pixel by pixel of the cell, row by row without gaps.
 struct CellTotals {
   double centre = 0;                        ///< of the first group
+  double magnitude = 0;                     ///< no total is larger
   std::array<std::int32_t, kCellPixels> whole;  ///< for integer pixels of up to 16 bits
   std::array<double, kCellPixels> real;         ///< for all others
 };

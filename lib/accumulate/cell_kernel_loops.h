@@ -1,74 +1,23 @@
+#pragma once
 // The loops behind cell_kernel.h. Included by one translation unit per instruction set, each compiled with its own
-// flags; all of it has internal linkage and it calls no templates of the standard library that might be emitted on
-// their own, so that no linker can mix code of one set into another.
-#include <cmath>
-#include <type_traits>
-
-#include "accumulate/cell_kernel.h"
+// flags, after the header with that set's loops over whole numbers. All of it has internal linkage and it calls no
+// templates of the standard library that might be emitted on their own, so that no linker can mix code of one set into
+// another.
+#include "accumulate/cell_hits.h"
+#include "accumulate/cell_workspace.h"
 
 #define XXH_INLINE_ALL
 #include <xxhash.h>
 
 namespace {
 
-using namespace evenfield;
-
-/// Integer pixels of up to 16 bits are centred into 16 bits: the middle of the cell's range as centre always fits.
-template <class T>
-constexpr bool kWhole = std::is_integral_v<T> && sizeof(T) <= 2;
-template <class T>
-using Centred = std::conditional_t<kWhole<T>, std::int16_t, double>;
-/// Products of centred integers are summed in 32 bits for as long as they cannot overflow, then widened.
-template <class T>
-using Sum = std::conditional_t<kWhole<T>, std::int64_t, double>;
-
-template <class T>
-struct Workspace {
-  using Value = std::conditional_t<kWhole<T>, std::int32_t, double>;
-  alignas(64) std::array<std::array<Centred<T>, kCellPixels>, kGroupFrames> centred;
-  alignas(64) std::array<Value, kCellPixels> highest;
-  alignas(64) std::array<Value, kCellPixels> sum;
-  alignas(64) std::array<double, kCellPixels> squares;
-  alignas(64) std::array<double, kCellPixels> deviation_sums;
-  Value* above() { return highest.data(); }
-  Value* total() { return sum.data(); }
-};
-
-template <class T>
-struct Range {
-  T low;
-  T high;
-};
-
-template <class T>
-Range<T> range_of(const CellInput& cell) {
-  const auto* first = static_cast<const T*>(cell.pixels[0]);
-  Range<T> range{first[0], first[0]};
-  for (int f = 0; f < cell.frames; ++f) {
-    const auto* pixels = static_cast<const T*>(cell.pixels[static_cast<std::size_t>(f)]);
-    for (int y = 0; y < cell.height; ++y) {
-      const T* row = pixels + y * cell.stride;
-      T low = range.low;
-      T high = range.high;
-      for (int x = 0; x < cell.width; ++x) {
-        low = row[x] < low ? row[x] : low;
-        high = row[x] > high ? row[x] : high;
-      }
-      range = {low, high};
-    }
-  }
-  return range;
-}
-
 /// The first frame with a pixel that is not finite, or -1.
 template <class T>
 int frame_not_finite(const CellInput& cell) {
-  for (int f = 0; f < cell.frames; ++f) {
-    const auto* pixels = static_cast<const T*>(cell.pixels[static_cast<std::size_t>(f)]);
+  for (int f = 0; f < cell.frames; ++f)
     for (int y = 0; y < cell.height; ++y)
       for (int x = 0; x < cell.width; ++x)
-        if (!std::isfinite(pixels[y * cell.stride + x])) return f;
-  }
+        if (!std::isfinite(row_of<T>(cell, f, y)[x])) return f;
   return -1;
 }
 
@@ -77,36 +26,54 @@ int frame_not_finite(const CellInput& cell) {
 template <class T>
 bool holds_whole_codes(const CellInput& cell) {
   if constexpr (std::is_floating_point_v<T>) {
-    const auto* pixels = static_cast<const T*>(cell.pixels[0]);
     for (int y = 0; y < cell.height; ++y)
       for (int x = 0; x < cell.width; ++x)
-        if (pixels[y * cell.stride + x] != std::floor(pixels[y * cell.stride + x])) return false;
+        if (row_of<T>(cell, 0, y)[x] != std::floor(row_of<T>(cell, 0, y)[x])) return false;
   }
   return true;
 }
 
 template <class T>
-void count_extremes(const CellInput& cell, Range<T> range, CellStatistics& out) {
-  std::int64_t low_count = 0;
-  std::int64_t high_count = 0;
-  for (int f = 0; f < cell.frames; ++f) {
-    const auto* pixels = static_cast<const T*>(cell.pixels[static_cast<std::size_t>(f)]);
-    for (int y = 0; y < cell.height; ++y) {
-      const T* row = pixels + y * cell.stride;
-      // Counted in the pixel's own width, which vectorizes; a row of a cell has at most 128 pixels.
-      using Count = std::conditional_t<std::is_integral_v<T>, std::make_unsigned_t<std::conditional_t<std::is_integral_v<T>, T, int>>, int>;
-      Count low = 0;
-      Count high = 0;
-      for (int x = 0; x < cell.width; ++x) {
-        low = static_cast<Count>(low + (row[x] == range.low ? 1 : 0));
-        high = static_cast<Count>(high + (row[x] == range.high ? 1 : 0));
+Range<T> range_of(const CellInput& cell) {
+  if constexpr (kWhole<T>) {
+    return whole_range<T>(cell);
+  } else {
+    Range<T> range{*row_of<T>(cell, 0, 0), *row_of<T>(cell, 0, 0)};
+    for (int f = 0; f < cell.frames; ++f)
+      for (int y = 0; y < cell.height; ++y) {
+        const T* row = row_of<T>(cell, f, y);
+        for (int x = 0; x < cell.width; ++x) {
+          range.low = row[x] < range.low ? row[x] : range.low;
+          range.high = row[x] > range.high ? row[x] : range.high;
+        }
       }
-      low_count += static_cast<std::int64_t>(low);
-      high_count += static_cast<std::int64_t>(high);
-    }
+    return range;
   }
-  out.lowest = {static_cast<double>(range.low), low_count};
-  out.highest = {static_cast<double>(range.high), high_count};
+}
+
+template <class T>
+std::int64_t count_of(const CellInput& cell, T code) {
+  // Counted in the pixel's own width, which vectorizes; a row of a cell has at most 128 pixels.
+  using Count = std::conditional_t<std::is_integral_v<T> && sizeof(T) == 1, std::uint8_t,
+                                   std::conditional_t<std::is_integral_v<T> && sizeof(T) == 2, std::uint16_t, std::uint32_t>>;
+  std::int64_t total = 0;
+  for (int f = 0; f < cell.frames; ++f)
+    for (int y = 0; y < cell.height; ++y) {
+      const T* row = row_of<T>(cell, f, y);
+      Count count = 0;
+      for (int x = 0; x < cell.width; ++x) count = static_cast<Count>(count + (row[x] == code ? 1 : 0));
+      total += count;
+    }
+  return total;
+}
+
+/// An extreme that some other cell of the block is known to exceed is not worth counting.
+template <class T>
+void find_extremes(const CellInput& cell, Range<T> range, CellStatistics& out) {
+  out.lowest = {static_cast<double>(range.low), 0};
+  out.highest = {static_cast<double>(range.high), 0};
+  if (!(out.lowest.code > cell.known_lowest)) out.lowest.count = count_of<T>(cell, range.low);
+  if (!(out.highest.code < cell.known_highest)) out.highest.count = count_of<T>(cell, range.high);
 }
 
 template <class T>
@@ -119,307 +86,141 @@ double centre_of(Range<T> range) {
 }
 
 template <class T>
-void centre_pixels(const CellInput& cell, double centre, Workspace<T>& work) {
-  for (int f = 0; f < cell.frames; ++f) {
-    const auto* pixels = static_cast<const T*>(cell.pixels[static_cast<std::size_t>(f)]);
-    Centred<T>* out = work.centred[static_cast<std::size_t>(f)].data();
-    for (int y = 0; y < cell.height; ++y) {
-      const T* row = pixels + y * cell.stride;
-      Centred<T>* to = out + y * cell.width;
-      if constexpr (kWhole<T>) {
-        // Modulo 2^16, which is exact since the difference fits.
-        const auto shift = static_cast<std::uint16_t>(static_cast<int>(centre));
-        for (int x = 0; x < cell.width; ++x)
-          to[x] = static_cast<std::int16_t>(static_cast<std::uint16_t>(static_cast<std::uint16_t>(row[x]) - shift));
-      } else {
+void centre_pixels(const CellInput& cell, double centre, Workspace<Centred<T>>& work) {
+  if constexpr (kWhole<T>) {
+    whole_centre<T>(cell, static_cast<int>(centre), work);
+  } else {
+    for (int f = 0; f < cell.frames; ++f) {
+      double* to = work.centred[static_cast<std::size_t>(f)].data();
+      for (int y = 0; y < cell.height; ++y, to += cell.width) {
+        const T* row = row_of<T>(cell, f, y);
         for (int x = 0; x < cell.width; ++x) to[x] = static_cast<double>(row[x]) - centre;
       }
     }
   }
 }
 
-std::int64_t dot(const std::int16_t* a, const std::int16_t* b, int count, int chunk) {
-  std::int64_t total = 0;
-  for (int begin = 0; begin < count; begin += chunk) {
-    const int end = begin + chunk < count ? begin + chunk : count;
-    std::int32_t part = 0;
-    for (int i = begin; i < end; ++i) part += static_cast<std::int32_t>(a[i]) * static_cast<std::int32_t>(b[i]);
-    total += part;
-  }
-  return total;
-}
-
-double dot(const double* a, const double* b, int count, int) {
-  // Four partial sums, in a fixed order, so that every instruction set gives the same bits.
-  double part[4] = {0, 0, 0, 0};
-  int i = 0;
-  for (; i + 4 <= count; i += 4)
-    for (int k = 0; k < 4; ++k) part[k] += a[i + k] * b[i + k];
-  for (int k = 0; i < count; ++i, ++k) part[k] += a[i] * b[i];
-  return (part[0] + part[1]) + (part[2] + part[3]);
-}
-
-std::int64_t sum(const std::int16_t* a, int count) {
-  std::int32_t total = 0;  // at most 128 terms of 16 bits
-  for (int i = 0; i < count; ++i) total += a[i];
-  return total;
-}
-
-double sum(const double* a, int count) {
+inline double real_sum(const double* row, int width) {
   double total = 0;
-  for (int i = 0; i < count; ++i) total += a[i];
+  for (int x = 0; x < width; ++x) total += row[x];
   return total;
 }
 
-/// Largest number of products |d|^2 that fit a 32 bit sum.
-int chunk_for(double magnitude) {
-  const double products = 2147483647.0 / (magnitude < 1 ? 1 : magnitude * magnitude);
-  return products < kCellPixels ? static_cast<int>(products) : static_cast<int>(kCellPixels);
+inline double real_dot(const double* a, const double* b, int count) {
+  // Eight partial sums, in a fixed order, so that every instruction set gives the same bits.
+  double part[8] = {0, 0, 0, 0, 0, 0, 0, 0};
+  int i = 0;
+  for (; i + 8 <= count; i += 8)
+    for (int k = 0; k < 8; ++k) part[k] += a[i + k] * b[i + k];
+  for (int k = 0; i < count; ++i, ++k) part[k] += a[i] * b[i];
+  return ((part[0] + part[1]) + (part[2] + part[3])) + ((part[4] + part[5]) + (part[6] + part[7]));
 }
 
-template <class T>
-void sums_and_gram(const CellInput& cell, int chunk, const Workspace<T>& work, CellStatistics& out) {
+template <class C>
+void sums_and_gram(const CellInput& cell, double magnitude, const Workspace<C>& work, CellStatistics& out) {
   const int pixels = cell.width * cell.height;
-  for (int i = 0; i < cell.frames; ++i) {
-    const auto* a = work.centred[static_cast<std::size_t>(i)].data();
-    Sum<T> total = 0;
-    for (int y = 0; y < cell.height; ++y) {
-      const Sum<T> row = sum(a + y * cell.width, cell.width);
-      out.row_sums[static_cast<std::size_t>(i * kCellRows + y)] = static_cast<double>(row);
-      total += row;
-    }
-    out.sums[static_cast<std::size_t>(i)] = static_cast<double>(total);
-    for (int j = i; j < cell.frames; ++j) {
-      const auto* b = work.centred[static_cast<std::size_t>(j)].data();
-      out.gram[pair_index(i, j, cell.frames)] = static_cast<double>(dot(a, b, pixels, chunk));
-    }
-  }
-}
-
-/// Temporal sum of squares of the cell, each frame's mean taken out; its degrees of freedom are (pixels - 1)(frames - 1).
-double temporal_squares(const CellInput& cell, const CellStatistics& s) {
-  const double n = cell.width * cell.height;
-  double own = 0;
-  double all = 0;
-  for (int i = 0; i < cell.frames; ++i)
-    for (int j = i; j < cell.frames; ++j) {
-      const double g = s.gram[pair_index(i, j, cell.frames)] -
-                       s.sums[static_cast<std::size_t>(i)] * s.sums[static_cast<std::size_t>(j)] / n;
-      if (i == j) own += g;
-      all += i == j ? g : 2 * g;
-    }
-  const double squares = own - all / cell.frames;
-  return squares > 0 ? squares : 0;
-}
-
-/// Limit for frames x (highest deviation) - (sum of deviations), which is (frames - 1) times the distance of the highest
-/// frame from the mean of the others. Two codes more for whole numbers: coarse steps are no hits.
-double hit_limit(const CellInput& cell, bool whole_codes, double variance) {
-  return cell.hit_threshold * std::sqrt(variance > 0 ? variance * cell.frames * (cell.frames - 1.0) : 0.0) +
-         (whole_codes ? 2.0 * (cell.frames - 1.0) : 0.0);
-}
-
-/// So many pixels of a cell may be hits; more are a structure that one variance does not describe.
-int most_hits(int pixels) { return pixels / 32 > 4 ? pixels / 32 : 4; }
-
-/// The `rank`-th largest of `count` values (from 0), which are reordered.
-double select_largest(double* values, int count, int rank) {
-  int low = 0;
-  int high = count - 1;
-  while (low < high) {
-    const double pivot = values[low + (high - low) / 2];
-    int i = low;
-    int j = high;
-    while (i <= j) {
-      while (values[i] > pivot) ++i;
-      while (values[j] < pivot) --j;
-      if (i <= j) {
-        const double swapped = values[i];
-        values[i++] = values[j];
-        values[j--] = swapped;
-      }
-    }
-    if (rank <= j)
-      high = j;
-    else if (rank >= i)
-      low = i;
-    else
-      break;
-  }
-  return values[rank];
-}
-
-/// Temporal variance of the cell without the pixels of largest squares, as many as may be hits: never a variance that contains
-/// what is judged by it. Leaving out the largest of clean pixels makes it smaller, by a quarter at most for two frames.
-template <class T>
-double trimmed_variance(const CellInput& cell, Workspace<T>& work, const CellStatistics& s) {
-  const int pixels = cell.width * cell.height;
-  const int left_out = most_hits(pixels);
-  if (pixels <= 2 * left_out) return 0;
-  double* squares = work.squares.data();
-  double* sums = work.deviation_sums.data();
+  constexpr bool kIsWhole = std::is_same_v<C, std::int16_t>;
   for (int f = 0; f < cell.frames; ++f) {
-    const auto* d = work.centred[static_cast<std::size_t>(f)].data();
-    const double mean = s.sums[static_cast<std::size_t>(f)] / pixels;
-    for (int p = 0; p < pixels; ++p) {
-      const double e = static_cast<double>(d[p]) - mean;
-      squares[p] = f == 0 ? e * e : squares[p] + e * e;
-      sums[p] = f == 0 ? e : sums[p] + e;
-    }
-  }
-  for (int p = 0; p < pixels; ++p) squares[p] -= sums[p] * sums[p] / cell.frames;
-  select_largest(squares, pixels, left_out);
-  double kept = 0;
-  for (int p = left_out; p < pixels; ++p) kept += squares[p];
-  return kept / ((pixels - left_out) * (cell.frames - 1.0));
-}
-
-/// One pixel of the cell through the frames of the group, each frame's mean taken out.
-struct PixelSeries {
-  double deviation[kGroupFrames];
-  int highest = 0;
-  double others_mean = 0;   ///< of all frames but the highest
-  double others_range = 0;
-};
-
-template <class T>
-PixelSeries pixel_series(const CellInput& cell, const Workspace<T>& work, const CellStatistics& s, int p) {
-  PixelSeries out;
-  const double n = cell.width * cell.height;
-  double sum_all = 0;
-  for (int f = 0; f < cell.frames; ++f) {
-    const auto k = static_cast<std::size_t>(f);
-    out.deviation[f] = static_cast<double>(work.centred[k][static_cast<std::size_t>(p)]) - s.sums[k] / n;
-    sum_all += out.deviation[f];
-    if (out.deviation[f] > out.deviation[out.highest]) out.highest = f;
-  }
-  double low = 0;
-  double high = 0;
-  bool begun = false;
-  for (int f = 0; f < cell.frames; ++f) {
-    const double d = out.deviation[f];
-    if (f == out.highest) continue;
-    low = !begun || d < low ? d : low;
-    high = !begun || d > high ? d : high;
-    begun = true;
-  }
-  out.others_mean = (sum_all - out.deviation[out.highest]) / (cell.frames - 1);
-  out.others_range = high - low;
-  return out;
-}
-
-/// Largest and sum over frames of each pixel's deviation from its frame's mean, to the nearest code for integers.
-template <class T, class Value>
-void scan_pixels(const CellInput& cell, const Workspace<T>& work, const CellStatistics& s, Value* above, Value* total) {
-  const int pixels = cell.width * cell.height;
-  for (int f = 0; f < cell.frames; ++f) {
-    const auto* d = work.centred[static_cast<std::size_t>(f)].data();
-    const double exact = s.sums[static_cast<std::size_t>(f)] / pixels;
-    const Value m = static_cast<Value>(kWhole<T> ? std::floor(exact + 0.5) : exact);
-    if (f == 0) {
-      for (int p = 0; p < pixels; ++p) total[p] = above[p] = static_cast<Value>(d[p]) - m;
-    } else {
-      for (int p = 0; p < pixels; ++p) {
-        const Value e = static_cast<Value>(d[p]) - m;
-        above[p] = e > above[p] ? e : above[p];
-        total[p] += e;
-      }
-    }
-  }
-}
-
-/// Replaces hits; returns how many. A hit is a pixel whose highest frame stands above the mean of its other frames by more
-/// than the threshold, while those others agree among themselves: a pixel that blinks, or a hot one with noise of its
-/// own, is not a hit. Hits shift the frame means that all is judged by, so the caller asks again until there are none.
-template <class T>
-int replace_hits(const CellInput& cell, bool whole_codes, double squares, Workspace<T>& work, CellStatistics& out) {
-  const int pixels = cell.width * cell.height;
-  auto* above = work.above();
-  auto* total = work.total();
-  scan_pixels(cell, work, out, above, total);
-  const auto score = [&](int p) { return static_cast<double>(above[p]) * cell.frames - static_cast<double>(total[p]); };
-  double top_score = score(0);
-  for (int p = 1; p < pixels; ++p) top_score = score(p) > top_score ? score(p) : top_score;
-  // Most cells end here, at no cost. What rounding the means can hide is one code in `frames` frames; and the pixels
-  // that may be hits hold so much of the squares at the most.
-  const double frames = cell.frames;
-  const double most_squares = most_hits(pixels) * top_score * top_score / (frames * (frames - 1));
-  const double least = (squares - most_squares) / (pixels * (frames - 1));
-  if (top_score + frames <= hit_limit(cell, whole_codes, 0.7 * least)) return 0;
-
-  const double limit = hit_limit(cell, whole_codes, trimmed_variance(cell, work, out));
-  const int most = most_hits(pixels);
-  int found = 0;
-  int hit_pixel[kCellPixels / 32 + 4];
-  int hit_frame[kCellPixels / 32 + 4];
-  for (int p = 0; p < pixels; ++p) {
-    if (score(p) + frames <= limit) continue;
-    const PixelSeries pixel = pixel_series(cell, work, out, p);
-    const double distance = pixel.deviation[pixel.highest] - pixel.others_mean;
-    constexpr double kAgreement = 2.5;
-    if (distance * (frames - 1) <= limit || distance <= kAgreement * pixel.others_range) continue;
-    if (found == most) return 0;
-    hit_pixel[found] = p;
-    hit_frame[found++] = pixel.highest;
-  }
-  // Frame means without the hits, which would otherwise leak into what replaces them.
-  double clean_sum[kGroupFrames];
-  int clean_pixels[kGroupFrames];
-  for (int f = 0; f < cell.frames; ++f) {
-    clean_sum[f] = out.sums[static_cast<std::size_t>(f)];
-    clean_pixels[f] = pixels;
-  }
-  const auto value_of = [&](int f, int p) {
-    return static_cast<double>(work.centred[static_cast<std::size_t>(f)][static_cast<std::size_t>(p)]);
-  };
-  for (int i = 0; i < found; ++i) {
-    clean_sum[hit_frame[i]] -= value_of(hit_frame[i], hit_pixel[i]);
-    --clean_pixels[hit_frame[i]];
-  }
-  for (int i = 0; i < found; ++i) {
-    double others = 0;
-    for (int f = 0; f < cell.frames; ++f)
-      if (f != hit_frame[i]) others += value_of(f, hit_pixel[i]) - clean_sum[f] / clean_pixels[f];
-    const double value = others / (cell.frames - 1) + clean_sum[hit_frame[i]] / clean_pixels[hit_frame[i]];
-    auto& stored = work.centred[static_cast<std::size_t>(hit_frame[i])][static_cast<std::size_t>(hit_pixel[i])];
-    if constexpr (kWhole<T>) {
-      const double whole = std::floor(value + 0.5);
-      stored = static_cast<std::int16_t>(whole < -32768 ? -32768 : whole > 32767 ? 32767 : whole);
-    } else {
-      stored = whole_codes ? std::floor(value + out.centre + 0.5) - out.centre : value;
-    }
-    ++out.hits[static_cast<std::size_t>(hit_frame[i])];
-  }
-  return found;
-}
-
-template <class T>
-void add_to_totals(const CellInput& cell, double centre, const Workspace<T>& work, CellTotals& totals) {
-  const int pixels = cell.width * cell.height;
-  if (cell.first_group) totals.centre = centre;
-  const double shift = cell.frames * (centre - totals.centre);
-  const auto add = [&](auto* total) {
-    using Total = std::remove_reference_t<decltype(*total)>;
-    const auto whole_shift = static_cast<Total>(shift);
-    for (int f = 0; f < cell.frames; ++f) {
-      const auto* d = work.centred[static_cast<std::size_t>(f)].data();
-      if (f == 0 && cell.first_group)
-        for (int p = 0; p < pixels; ++p) total[p] = static_cast<Total>(d[p]);
-      else if (f == 0)
-        for (int p = 0; p < pixels; ++p) total[p] += static_cast<Total>(d[p]) + whole_shift;
+    const C* row = work.centred[static_cast<std::size_t>(f)].data();
+    double total = 0;
+    for (int y = 0; y < cell.height; ++y, row += cell.width) {
+      double sum = 0;
+      if constexpr (kIsWhole)
+        sum = whole_sum(row, cell.width);
       else
-        for (int p = 0; p < pixels; ++p) total[p] += static_cast<Total>(d[p]);
+        sum = real_sum(row, cell.width);
+      out.row_sums[static_cast<std::size_t>(f * kCellRows + y)] = sum;
+      total += sum;
     }
+    out.sums[static_cast<std::size_t>(f)] = total;
+  }
+  if constexpr (kIsWhole) {
+    std::int64_t gram[pair_count(kGroupFrames)];
+    whole_gram(work, cell.frames, padded(pixels), magnitude, gram);
+    for (std::size_t k = 0; k < pair_count(cell.frames); ++k) out.gram[k] = static_cast<double>(gram[k]);
+  } else {
+    for (int i = 0; i < cell.frames; ++i)
+      for (int j = i; j < cell.frames; ++j)
+        out.gram[pair_index(i, j, cell.frames)] = real_dot(work.centred[static_cast<std::size_t>(i)].data(),
+                                                           work.centred[static_cast<std::size_t>(j)].data(), pixels);
+  }
+}
+
+/// No pixel stands out by more than the result, which is the largest range of any pixel over the frames of the group.
+template <class C>
+double deviation_range(const CellInput& cell, const Workspace<C>& work, const CellStatistics& s) {
+  const int pixels = cell.width * cell.height;
+  if constexpr (std::is_same_v<C, std::int16_t>) {
+    int mean[kGroupFrames];
+    for (int f = 0; f < cell.frames; ++f)
+      mean[f] = static_cast<int>(std::floor(s.sums[static_cast<std::size_t>(f)] / pixels + 0.5));
+    return whole_deviation_range(work, cell.frames, pixels, mean) + 1;  // what rounding the means can hide
+  } else {
+    double widest = 0;
+    for (int p = 0; p < pixels; ++p) {
+      double low = 0;
+      double high = 0;
+      for (int f = 0; f < cell.frames; ++f) {
+        const auto k = static_cast<std::size_t>(f);
+        const double e = work.centred[k][static_cast<std::size_t>(p)] - s.sums[k] / pixels;
+        low = f == 0 || e < low ? e : low;
+        high = f == 0 || e > high ? e : high;
+      }
+      widest = high - low > widest ? high - low : widest;
+    }
+    return widest;
+  }
+}
+
+/// Sets hits aside. Nearly all cells end at one of the first two questions.
+template <class C>
+void set_hits_aside(const CellInput& cell, bool whole_codes, double spread, double magnitude, Workspace<C>& work, CellStatistics& out) {
+  const int pixels = cell.width * cell.height;
+  // The variance that remains when as many pixels as may be hits owe the most that this range allows to the squares; the
+  // largest of clean pixels are trimmed too, which takes a quarter at most.
+  const auto least_limit = [&](double range) {
+    const double most = most_hits(pixels) * range * range * (cell.frames - 1) / cell.frames;
+    const double least = 0.7 * (temporal_squares(cell, out) - most) / (pixels * (cell.frames - 1.0));
+    return hit_limit(cell, whole_codes, least);
   };
-  if constexpr (kWhole<T>)
-    add(totals.whole.data());
-  else
-    add(totals.real.data());
+  if (spread * (cell.frames - 1) <= least_limit(spread)) return;
+  constexpr int kRounds = 8;  // each finds what larger hits have hidden by shifting the frame means
+  for (int round = 0; round < kRounds; ++round) {
+    const double range = deviation_range(cell, work, out);
+    if (range * (cell.frames - 1) <= least_limit(range)) return;
+    if (replace_hits(cell, whole_codes, work, out) == 0) return;
+    sums_and_gram(cell, magnitude, work, out);
+  }
+}
+
+template <class T>
+void add_to_totals(const CellInput& cell, double centre, double magnitude, const Workspace<Centred<T>>& work, CellTotals& totals) {
+  const int pixels = cell.width * cell.height;
+  if (cell.first_group) {
+    totals.centre = centre;
+    totals.magnitude = 0;
+  }
+  const double shift = cell.frames * (centre - totals.centre);
+  totals.magnitude += cell.frames * magnitude + std::fabs(shift);
+  if constexpr (kWhole<T>) {
+    whole_add(work, cell.frames, pixels, magnitude, cell.first_group, static_cast<int>(shift), totals.whole.data());
+  } else {
+    for (int f = 0; f < cell.frames; ++f) {
+      const double* d = work.centred[static_cast<std::size_t>(f)].data();
+      double* total = totals.real.data();
+      if (f == 0 && cell.first_group)
+        for (int p = 0; p < pixels; ++p) total[p] = d[p];
+      else if (f == 0)
+        for (int p = 0; p < pixels; ++p) total[p] += d[p] + shift;
+      else
+        for (int p = 0; p < pixels; ++p) total[p] += d[p];
+    }
+  }
 }
 
 template <class T>
 void measure_cell(const CellInput& cell, CellTotals& totals, CellStatistics& out) {
-  static thread_local Workspace<T> work;
+  static thread_local Workspace<Centred<T>> work;
   out.hits.fill(0);
   out.bad_frame = -1;
   if constexpr (std::is_floating_point_v<T>) {
@@ -427,73 +228,71 @@ void measure_cell(const CellInput& cell, CellTotals& totals, CellStatistics& out
     if (out.bad_frame >= 0) return;
   }
   const Range<T> range = range_of<T>(cell);
-  count_extremes(cell, range, out);
+  find_extremes(cell, range, out);
   out.centre = centre_of(range);
-  centre_pixels(cell, out.centre, work);
+  centre_pixels<T>(cell, out.centre, work);
   const double up = static_cast<double>(range.high) - out.centre;
   const double down = out.centre - static_cast<double>(range.low);
   const double magnitude = up > down ? up : down;
-  const int chunk = chunk_for(magnitude);
-  sums_and_gram(cell, chunk, work, out);
-  if (cell.hit_threshold > 0 && cell.frames > 1) {
-    const double spread = static_cast<double>(range.high) - static_cast<double>(range.low);
-    const bool whole_codes = holds_whole_codes<T>(cell);
-    constexpr int kRounds = 8;  // each finds what the larger hits of the round before had hidden
-    for (int round = 0; round < kRounds; ++round) {
-      const double squares = temporal_squares(cell, out);
-      // No pixel can stand out by more than the cell's whole range, nor pixels owe more than that to the squares.
-      const int pixels = cell.width * cell.height;
-      const double most = most_hits(pixels) * spread * spread * (cell.frames - 1) / cell.frames;
-      const double least = 0.7 * (squares - most) / (pixels * (cell.frames - 1.0));
-      if (spread * (cell.frames - 1) <= hit_limit(cell, whole_codes, least)) break;
-      if (replace_hits(cell, whole_codes, squares, work, out) == 0) break;
-      sums_and_gram(cell, chunk, work, out);
-    }
-  }
-  add_to_totals(cell, out.centre, work, totals);
+  sums_and_gram(cell, magnitude, work, out);
+  if (cell.hit_threshold > 0 && cell.frames > 1)
+    set_hits_aside(cell, holds_whole_codes<T>(cell), up + down, magnitude, work, out);
+  add_to_totals<T>(cell, out.centre, magnitude, work, totals);
 }
 
 template <class T>
 void square_totals(const CellTotals& totals, int width, int height, CellSquares& out) {
   out.square = 0;
   out.sum = 0;
-  out.column_sums.fill(0);
-  for (int y = 0; y < height; ++y) {
-    double square = 0;
-    double row_sum = 0;
-    for (int x = 0; x < width; ++x) {
-      const auto p = static_cast<std::size_t>(y * width + x);
-      double total = 0;
-      if constexpr (kWhole<T>)
-        total = totals.whole[p];
-      else
-        total = totals.real[p];
-      square += total * total;
-      row_sum += total;
-      out.column_sums[static_cast<std::size_t>(x)] += total;
+  if constexpr (kWhole<T>) {
+    constexpr double kSquaresInWholes = 67108864.0;  // 2^26: 2048 squares of it fit 63 bits
+    std::array<std::int64_t, kCellColumns> columns{};
+    for (int y = 0; y < height; ++y) {
+      const std::int32_t* row = totals.whole.data() + y * width;
+      for (int x = 0; x < width; ++x) columns[static_cast<std::size_t>(x)] += row[x];
     }
-    out.square += square;
-    out.sum += row_sum;
+    for (int x = 0; x < width; ++x) {
+      out.column_sums[static_cast<std::size_t>(x)] = static_cast<double>(columns[static_cast<std::size_t>(x)]);
+      out.sum += static_cast<double>(columns[static_cast<std::size_t>(x)]);
+    }
+    if (totals.magnitude < kSquaresInWholes) {
+      out.square = static_cast<double>(whole_square(totals.whole.data(), width * height));
+    } else {
+      for (int p = 0; p < width * height; ++p)
+        out.square += static_cast<double>(totals.whole[static_cast<std::size_t>(p)]) * totals.whole[static_cast<std::size_t>(p)];
+    }
+  } else {
+    out.column_sums.fill(0);
+    for (int y = 0; y < height; ++y)
+      for (int x = 0; x < width; ++x) out.column_sums[static_cast<std::size_t>(x)] += totals.real[static_cast<std::size_t>(y * width + x)];
+    for (int x = 0; x < width; ++x) out.sum += out.column_sums[static_cast<std::size_t>(x)];
+    out.square = real_dot(totals.real.data(), totals.real.data(), width * height);
   }
 }
 
-std::array<std::uint64_t, 2> hash_row(const void* row, std::size_t bytes, std::uint64_t seed) {
-  const XXH128_hash_t hash = XXH3_128bits_withSeed(row, bytes, seed);
+/// The place of the row is mixed in after the row's own hash: a seeded hash would make a secret of its own for each row.
+inline std::array<std::uint64_t, 2> hash_row(const void* row, std::size_t bytes, std::uint64_t number) {
+  const XXH128_hash_t plain = XXH3_128bits(row, bytes);
+  const std::uint64_t placed[3] = {plain.low64, plain.high64, number};
+  const XXH128_hash_t hash = XXH3_128bits(placed, sizeof placed);
   return {hash.low64, hash.high64};
 }
 
-CellKernels kernels_for(PixelType type) {
+template <class T>
+constexpr CellKernels kKernels{measure_cell<T>, square_totals<T>, hash_row};
+
+inline CellKernels kernels_for(PixelType type) {
   switch (type) {
-    case PixelType::u8: return {measure_cell<std::uint8_t>, square_totals<std::uint8_t>, hash_row};
-    case PixelType::i8: return {measure_cell<std::int8_t>, square_totals<std::int8_t>, hash_row};
-    case PixelType::u16: return {measure_cell<std::uint16_t>, square_totals<std::uint16_t>, hash_row};
-    case PixelType::i16: return {measure_cell<std::int16_t>, square_totals<std::int16_t>, hash_row};
-    case PixelType::u32: return {measure_cell<std::uint32_t>, square_totals<std::uint32_t>, hash_row};
-    case PixelType::i32: return {measure_cell<std::int32_t>, square_totals<std::int32_t>, hash_row};
-    case PixelType::f32: return {measure_cell<float>, square_totals<float>, hash_row};
-    case PixelType::f64: return {measure_cell<double>, square_totals<double>, hash_row};
+    case PixelType::u8: return kKernels<std::uint8_t>;
+    case PixelType::i8: return kKernels<std::int8_t>;
+    case PixelType::u16: return kKernels<std::uint16_t>;
+    case PixelType::i16: return kKernels<std::int16_t>;
+    case PixelType::u32: return kKernels<std::uint32_t>;
+    case PixelType::i32: return kKernels<std::int32_t>;
+    case PixelType::f32: return kKernels<float>;
+    case PixelType::f64: return kKernels<double>;
   }
-  return {measure_cell<double>, square_totals<double>, hash_row};
+  return kKernels<double>;
 }
 
 }  // namespace

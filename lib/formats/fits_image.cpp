@@ -161,8 +161,7 @@ class ImageReader {
     }
     image_.gzip = name->starts_with("GZIP");
     image_.data_bytes = part_.data_bytes;
-    const double pixels =
-        static_cast<double>(stored_bytes()) / (std::abs(bits_) / 8) * static_cast<double>(image_.planes);
+    const double pixels = 1.0 * image_.shape.width * image_.shape.height * static_cast<double>(image_.planes);
     double tile_pixels = 1.0;
     for (std::size_t axis = 0; axis < image_.axes.size(); ++axis) {
       const std::string key = "ZTILE" + std::to_string(axis + 1);

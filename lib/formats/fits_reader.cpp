@@ -98,8 +98,8 @@ class FitsDecoder : public FrameDecoder {
     const auto number = static_cast<std::size_t>(after - first_pages_.begin()) - 1;
     const FitsImage& image = open_.images[number];
     const std::uint64_t plane = index - first_pages_[number];
-    const Status read = image.raw ? read_raw_frame(open_.bytes, page_of(image, plane, false), pixels)
-                                  : read_fits_plane(open_.handle.get(), image, plane, pixels);
+    Status read = image.raw ? read_raw_frame(open_.bytes, page_of(image, plane, false), pixels)
+                            : read_fits_plane(open_.handle.get(), image, plane, pixels);
     if (read) return read;
     Error error = read.error();
     error.where.file = path_;

@@ -55,7 +55,7 @@ class FitsWriter : public FrameWriter {
     if (written_ >= frames_) return error("", "found one more frame, expected " + std::to_string(frames_));
     if (!handle_) return error("", "is closed already");
     if (written_ == 0 || options_.extensions) {
-      const Status header = write_header();
+      Status header = write_header();
       if (!header) return header;
     }
     int status = 0;
@@ -111,7 +111,7 @@ class FitsWriter : public FrameWriter {
       if (status != 0) return failed(name, status);
     }
     for (const auto& [name, number] : options_.number_keywords) {
-      const Status written = write_number(name, number);
+      Status written = write_number(name, number);
       if (!written) return written;
     }
     return Done{};

@@ -3,8 +3,8 @@
 ///
 /// A frame is one grey-scale image: a page of a TIFF file, or a plane of an image of a FITS file. Pages are
 /// numbered from 1 in file order; a FITS cube counts plane by plane. Only headers are read by inspect().
-/// Pixels that lie in the file uncompressed and row by row are described by extents, so that anyone can read them
-/// by offset; all other pixels are decoded a whole frame at a time.
+/// Pixels that lie in the file uncompressed and row by row are described by extents, so that anyone can read
+/// them by offset; all other pixels are decoded a whole frame at a time.
 
 #include <cstdint>
 #include <filesystem>
@@ -18,10 +18,10 @@
 
 namespace evenfield {
 
-/// How stored numbers become DN: swap bytes, then add `offset` in the arithmetic of `stored` modulo its range.
+/// How stored bits become native numbers: swap bytes, then flip the highest bit.
 struct RawEncoding {
-  bool swap_bytes = false;      ///< stored byte order is not this machine's
-  bool flip_sign_bit = false;   ///< the FITS convention for unsigned numbers (and signed bytes)
+  bool swap_bytes = false;     ///< stored byte order is not this machine's
+  bool flip_sign_bit = false;  ///< the FITS convention for unsigned numbers (and signed bytes)
 };
 
 /// Rows [first_row, first_row + rows) lie at `offset`, `width` pixels each, without gaps.
@@ -52,9 +52,9 @@ struct FrameFile {
   FrameHeader header;
 };
 
-/// Reads the headers of `path`. The format is told from the first bytes, not from the name. Errors (input) name
-/// file, page and tag or keyword: not found, neither TIFF nor FITS, truncated, no frame inside, more than one sample a
-/// pixel, a pixel type or compression outside the list, sizes outside limits.
+/// Reads the headers of `path`. The format is told from the first bytes, not from the name. Errors (input)
+/// name file, page and tag or keyword: not found, neither TIFF nor FITS, truncated, no frame inside, more
+/// than one sample a pixel, a pixel type or compression outside the list, sizes outside limits.
 Result<FrameFile> inspect(const std::filesystem::path& path);
 
 /// Decodes frames of one file; for one thread at a time.

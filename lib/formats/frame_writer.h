@@ -19,11 +19,11 @@ enum class WriteCompression { none, deflate, lzw, packbits, rice, gzip };  ///< 
 struct WriteOptions {
   WriteFormat format = WriteFormat::tiff;
   WriteCompression compression = WriteCompression::none;
-  bool big_tiff = false;      ///< TIFF only
-  bool big_endian = false;    ///< TIFF only
-  int rows_per_strip = 0;     ///< TIFF only; 0: the whole frame if uncompressed, else 64
-  int tile_size = 0;          ///< TIFF only; 0: strips
-  bool extensions = false;    ///< FITS only: one image extension a frame instead of a cube
+  bool big_tiff = false;    ///< TIFF only
+  bool big_endian = false;  ///< TIFF only
+  int rows_per_strip = 0;   ///< TIFF only; 0: the whole frame if uncompressed, else 64
+  int tile_size = 0;        ///< TIFF only; 0: strips
+  bool extensions = false;  ///< FITS only: one image extension a frame instead of a cube
   std::vector<std::pair<std::string, std::string>> text_keywords{};  ///< FITS only, e.g. {"DATE-OBS", "..."}
   std::vector<std::pair<std::string, double>> number_keywords{};     ///< FITS only, e.g. {"EXPTIME", 0.01}
 };

@@ -102,7 +102,7 @@ Result<UnpackedFits> unpack_fits(const std::filesystem::path& path, Unpack what)
   std::uint64_t position = 0;
   FitsStream stream;
   stream.read = [&](char* to, std::size_t bytes) -> Result<std::size_t> {
-    const auto got = gunzip.read(to, bytes);
+    auto got = gunzip.read(to, bytes);
     if (!got) return got;
     if (position == 0 && is_tiff(to, *got)) {
       return Error{Errc::input,

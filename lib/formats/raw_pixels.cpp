@@ -47,7 +47,7 @@ Status read_raw_frame(const DiskFile& file, const FramePage& page, void* pixels)
   for (const RawExtent& extent : page.extents) {
     const auto rows = static_cast<std::size_t>(extent.rows);
     auto* to = static_cast<char*>(pixels) + static_cast<std::size_t>(extent.first_row) * row_bytes;
-    const Status read = file.read(extent.offset, to, rows * row_bytes);
+    Status read = file.read(extent.offset, to, rows * row_bytes);
     if (!read) return read;
     decode_raw(to, rows * width, page.shape.type, page.encoding);
   }

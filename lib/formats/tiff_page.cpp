@@ -30,7 +30,7 @@ class DirectoryReader {
   Result<TiffPage> read() {
     for (const auto check : {&DirectoryReader::read_shape, &DirectoryReader::read_colour,
                              &DirectoryReader::read_compression, &DirectoryReader::read_blocks}) {
-      const Status status = (this->*check)();
+      Status status = (this->*check)();
       if (!status) return status.error();
     }
     const char* time = nullptr;
@@ -55,7 +55,7 @@ class DirectoryReader {
       return wrong("ImageLength", "none", "a number");
     Where size = where_;
     size.key = "ImageWidth and ImageLength";
-    const Status fits = check_frame_size(width, height, size);
+    Status fits = check_frame_size(width, height, size);
     if (!fits) return fits;
     const auto samples = field<std::uint16_t>(tiff_, TIFFTAG_SAMPLESPERPIXEL, 1);
     if (samples != 1) return wrong("SamplesPerPixel", std::to_string(samples), "1");
@@ -139,7 +139,7 @@ class DirectoryReader {
 
   Status read_blocks() {
     page_.tiled = TIFFIsTiled(tiff_) != 0;
-    const Status status = page_.tiled ? read_tile_size() : read_strip_size();
+    Status status = page_.tiled ? read_tile_size() : read_strip_size();
     if (!status) return status;
     const FrameShape& shape = page_.frame.shape;
     const std::size_t pixel_bytes = bytes_per_pixel(shape.type);
@@ -151,8 +151,8 @@ class DirectoryReader {
       const int first = row * page_.block_height;
       const int rows = page_.tiled ? page_.block_height : std::min(page_.block_height, shape.height - first);
       for (int column = 0; column < across; ++column) {
-        const Status block = read_block(static_cast<std::uint32_t>(row * across + column), first, rows,
-                                        static_cast<std::uint64_t>(rows) * block_row_bytes, stored);
+        Status block = read_block(static_cast<std::uint32_t>(row * across + column), first, rows,
+                                  static_cast<std::uint64_t>(rows) * block_row_bytes, stored);
         if (!block) return block;
       }
     }

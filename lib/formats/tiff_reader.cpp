@@ -89,13 +89,13 @@ class TiffDecoder : public FrameDecoder {
     }
     const FramePage& frame = file_.pages[static_cast<std::size_t>(page - 1)];
     if (!frame.extents.empty()) {
-      const Status status = read_raw_frame(bytes_, frame, pixels);
+      Status status = read_raw_frame(bytes_, frame, pixels);
       if (status) return status;
       Error error = status.error();
       error.where.page = page;
       return error;
     }
-    const Status there = go_to(page);
+    Status there = go_to(page);
     if (!there) return there;
     // Read again: nothing of what is decoded may rest on a file that has changed since it was inspected.
     const auto now = read_tiff_page(handle_, file_.path, bytes_.size(), page);

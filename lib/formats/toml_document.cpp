@@ -41,9 +41,9 @@ namespace {
 
 constexpr std::size_t kMaxBytes = 16'000'000;
 constexpr int kMaxKeyParts = 16;
+constexpr std::size_t kShown = 80;  // bytes of a string or key that a message repeats
 
 std::string in_quotes(std::string_view text) {
-  constexpr std::size_t kShown = 80;
   std::size_t end = std::min(text.size(), kShown);
   while (end > 0 && end < text.size() && (static_cast<unsigned char>(text[end]) & 0xC0U) == 0x80U) --end;
   return '"' + std::string(text.substr(0, end)) + (end < text.size() ? "...\"" : "\"");
@@ -181,9 +181,9 @@ std::optional<std::vector<T>> list_of(TomlTable& table,
   return out;
 }
 
-/// "outer.key", the key quoted where TOML would need it.
+/// "outer.key", the key quoted where TOML would need it, and where it is cut short.
 std::string joined(const std::string& path, std::string_view key) {
-  const bool bare = !key.empty() && std::all_of(key.begin(), key.end(), [](char c) {
+  const bool bare = !key.empty() && key.size() <= kShown && std::all_of(key.begin(), key.end(), [](char c) {
     return (c >= 'a' && c <= 'z') || (c >= 'A' && c <= 'Z') || (c >= '0' && c <= '9') || c == '_' || c == '-';
   });
   const std::string part = bare ? std::string(key) : in_quotes(key);

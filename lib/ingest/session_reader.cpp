@@ -4,6 +4,7 @@
 #include <cstdint>
 #include <limits>
 #include <string>
+#include <unordered_map>
 #include <utility>
 
 #include "base/parallel.h"
@@ -59,13 +60,14 @@ void read_light(TomlTable& table, Light& light) {
 }
 
 void put_over(GivenSettings& given, GivenSettings newer) {
-  for (auto& [key, value] : newer) {
-    const auto old =
-        std::find_if(given.begin(), given.end(), [&k = key](const auto& one) { return one.first == k; });
-    if (old == given.end())
-      given.emplace_back(key, std::move(value));
+  std::unordered_map<std::string, std::size_t> places;
+  for (std::size_t i = 0; i < given.size(); ++i) places.emplace(given[i].first, i);
+  for (auto& one : newer) {
+    const auto [place, is_new] = places.try_emplace(one.first, given.size());
+    if (is_new)
+      given.push_back(std::move(one));
     else
-      old->second = std::move(value);
+      given[place->second].second = std::move(one.second);
   }
 }
 
@@ -125,7 +127,8 @@ void read_overscan(TomlTable& table, SessionRegion& region) {
     table.fail("overscan", "found an overscan that overlaps its region, expected pixels outside it");
 }
 
-SessionRegion read_region(TomlTable& table, const std::vector<SessionRegion>& earlier) {
+/// `names` are those of the regions so far, with their numbers.
+SessionRegion read_region(TomlTable& table, std::unordered_map<std::string, std::size_t>& names) {
   SessionRegion region;
   table.require("name");
   region.name = table.text("name").value_or("");
@@ -138,9 +141,8 @@ SessionRegion read_region(TomlTable& table, const std::vector<SessionRegion>& ea
   if (std::any_of(region.name.begin(), region.name.end(),
                   [](char c) { return c == '@' || c == '\x7F' || static_cast<unsigned char>(c) < 0x20; }))
     refuse("a name without @ and control characters");
-  for (std::size_t i = 0; i < earlier.size(); ++i)
-    if (earlier[i].name == region.name)
-      refuse("a name other than that of region[" + std::to_string(i + 1) + ']');
+  const auto [first, is_new] = names.try_emplace(region.name, names.size() + 1);
+  if (!is_new) refuse("a name other than that of region[" + std::to_string(first->second) + ']');
   region.rect.x = required_int(table, "x", 0).value_or(0);
   region.rect.y = required_int(table, "y", 0).value_or(0);
   region.rect.width = required_int(table, "width", kSmallestRegion).value_or(kSmallestRegion);
@@ -287,7 +289,8 @@ Result<OpenedSession> open_session(TomlDocument document,
     if (!over) return over.error();
   }
   std::vector<TomlTable> region_tables = root.tables("region");
-  for (TomlTable& table : region_tables) session.regions.push_back(read_region(table, session.regions));
+  std::unordered_map<std::string, std::size_t> region_names;
+  for (TomlTable& table : region_tables) session.regions.push_back(read_region(table, region_names));
   session.regions_listed = !session.regions.empty();
 
   root.require("series");

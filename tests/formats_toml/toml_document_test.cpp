@@ -198,6 +198,15 @@ TEST_CASE("what a file says cannot steer a terminal") {
   CHECK(line == "s.toml, line 1, a: found the string \"\\x1b[2J\", expected a number from 0 to 1");
 }
 
+TEST_CASE("a message stays short, however long the key or the string") {
+  CHECK(error_line(repeated("k", 1000) + " = 1\n") ==
+        "s.toml, line 1, \"" + repeated("k", 80) + "...\": found an unknown key, expected none");
+  // The 80th byte would cut the 27th of these letters of three bytes in two.
+  CHECK(error_line("a = \"" + repeated("\xE2\x82\xAC", 100) + "\"\n", [](TomlTable& t) { t.boolean("a"); }) ==
+        "s.toml, line 1, a: found the string \"" + repeated("\xE2\x82\xAC", 26) +
+            "...\", expected true or false");
+}
+
 TEST_CASE("nesting without end is an error and does not overflow the stack") {
   CHECK(error_line("a = " + repeated("[", 1'000'000)).find("s.toml, line 1: found text that is not TOML") ==
         0);
