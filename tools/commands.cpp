@@ -18,7 +18,7 @@ void add_common(po::options_description& options) {
       ("quiet", "no messages but errors")
       ("json", "results on standard output as JSON")
       ("progress", po::value<std::string>()->value_name("WHEN")->default_value("auto"), "auto, always or never (auto: on a terminal)")
-      ("help", "this text")
+      ("help,h", "this text")
       ("version", "which version this is");
 }
 

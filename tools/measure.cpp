@@ -6,6 +6,7 @@
 #include "base/text.h"
 #include "commands.h"
 #include "pipeline.h"
+#include "progress_watch.h"
 #include "report/measured_text.h"
 #include "report/output_folder.h"
 #include "report/report.h"
@@ -60,7 +61,8 @@ int measure_command(int argc, char** argv) {
   if (!parsed.values.contains("session")) return refuse("found no session file, expected one");
   const auto sessions = parsed.values["session"].as<std::vector<std::string>>();
   if (sessions.size() > 1) return refuse("found " + std::to_string(sessions.size()) + " session files, expected one");
-  if (!parsed.values.contains("out")) return refuse("found no --out, expected the folder for the results");
+  if (!parsed.values.contains("out") || parsed.values["out"].as<std::string>().empty())
+    return refuse("found no --out, expected the folder for the results");
   const auto plots = plot_selection(split(parsed.values["plots"].as<std::string>()));
   if (!plots) return report_error(plots.error());
 
@@ -71,17 +73,21 @@ int measure_command(int argc, char** argv) {
   MeasureOptions measure_options;
   measure_options.threads = parsed.common.threads;
   if (parsed.values.contains("camera")) measure_options.camera_file = parsed.values["camera"].as<std::string>();
-  measure_options.progress = [&](int done, int of) {
-    line.show("reading frames: " + std::to_string(done) + " of " + std::to_string(of) + " series");
+  Progress progress;
+  measure_options.progress = &progress;
+  std::optional<ProgressWatch> watch(std::in_place, line, progress);
+  const auto hide = [&] {
+    watch.reset();
+    line.clear();
   };
   const auto result = measure(sessions.front(), measure_options);
   if (!result) {
-    line.clear();
+    hide();
     return report_error(result.error());
   }
-  line.show("writing the report");
+  progress.stage = "writing the report";
   const auto written = write_report(*result, folder->path(), {*plots});
-  line.clear();
+  hide();
   if (!written) return report_error(written.error());
   if (interrupt_requested()) return report_error(interrupted());
   if (const Status committed = folder->commit(); !committed) return report_error(committed.error());

@@ -69,7 +69,8 @@ int synth_command(int argc, char** argv) {
   const auto scenes = parsed.values["scene"].as<std::vector<std::string>>();
   if (scenes.size() > 1)
     return refuse("found " + std::to_string(scenes.size()) + " scene files, expected one");
-  if (!parsed.values.contains("out")) return refuse("found no --out, expected the folder for the session");
+  if (!parsed.values.contains("out") || parsed.values["out"].as<std::string>().empty())
+    return refuse("found no --out, expected the folder for the session");
   std::optional<WriteFormat> format;
   if (parsed.values.contains("format")) {
     const auto word = parsed.values["format"].as<std::string>();

@@ -260,7 +260,11 @@ GainAndNoise find_gain_and_noise(const RegionLevels& levels) {
           values[static_cast<std::size_t>(present[k])].value_or(*whole[static_cast<std::size_t>(present[k])]);
   }
   const auto resampled = jackknife(left_out);
-  if (!resampled) return out;
+  if (!resampled) {
+    if (whole[kGain]) out.gain_reason = "no uncertainty could be had: " + resampled.error().what;
+    if (whole[kNoiseDn]) out.read_noise_reason = "no uncertainty could be had: " + resampled.error().what;
+    return out;
+  }
   const std::array<std::optional<Estimate>*, kStatistics> targets{&out.gain, nullptr, &out.origin_gain, &out.read_noise_dn, &out.read_noise_e};
   for (std::size_t k = 0; k < present.size(); ++k) {
     const int column = static_cast<int>(k);
@@ -274,6 +278,22 @@ GainAndNoise find_gain_and_noise(const RegionLevels& levels) {
     std::vector<double> row;
     for (int j = 0; j < correlation.columns; ++j) row.push_back(correlation(i, j));
     out.correlations.matrix.push_back(std::move(row));
+  }
+  if (out.gain && out.gain->statistical_uncertainty <= 0) {
+    out.gain.reset();
+    out.origin_gain.reset();
+    out.read_noise_e.reset();
+    out.gain_reason = "the frames show no noise of their own, so nothing is known of the uncertainty";
+  }
+  if (out.gain && out.origin_gain) {
+    const Matrix& c = resampled->covariance;
+    const auto column = [&](int statistic) {
+      return static_cast<int>(std::find(present.begin(), present.end(), statistic) - present.begin());
+    };
+    const int line_column = column(kGain);
+    const int origin_column = column(kOrigin);
+    const double variance = c(line_column, line_column) + c(origin_column, origin_column) - 2 * c(line_column, origin_column);
+    if (variance > 0) out.origin_disagreement = (out.origin_gain->value - out.gain->value) / std::sqrt(variance);
   }
   out.gain_note = unit == ResamplingUnit::bands ? "rows share noise, so bands of rows were resampled" : "";
   return out;

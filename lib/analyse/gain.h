@@ -31,6 +31,7 @@ struct GainAndNoise {
   SeriesWeights reference_dark;                ///< V_dark(t0)
   std::optional<double> read_exposure_s;       ///< exposure of the darks behind read noise; 0 if extrapolated
   double chi2 = 0, chi2_dof = 0;               ///< of the line
+  double origin_disagreement = 0;              ///< origin line less line, in standard uncertainties of the difference
   Correlations correlations;                   ///< of gain, its inverse, origin gain and read noise
 };
 

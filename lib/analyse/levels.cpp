@@ -49,6 +49,7 @@ Codes find_codes(const AnalysisInput& input) {
   Codes out;
   bool stepped = true;
   double highest = 0;
+  double lowest = std::numeric_limits<double>::infinity();
   double brightest = -std::numeric_limits<double>::infinity();
   const SeriesInput* bright = nullptr;
   for (const SeriesInput& series : input.series) {
@@ -60,6 +61,7 @@ Codes find_codes(const AnalysisInput& input) {
     double mean = 0;
     for (const RegionSummary& region : series.regions) {
       highest = std::max(highest, region.highest.code);
+      lowest = std::min(lowest, region.lowest.code);
       mean = std::max(mean, region.mean);
     }
     if (series.conditions.kind == SeriesKind::flat && mean > brightest) {
@@ -79,6 +81,8 @@ Codes find_codes(const AnalysisInput& input) {
         const double share =
             static_cast<double>(region.block_highest[b].count) / (region.block_pixels[b] * region.frames);
         if (share > 0.5 && share > most) {
+          // A code that is also the lowest of the session is no top: the frames are empty.
+          if (region.block_highest[b].code <= lowest) continue;
           most = share;
           out.top_code = region.block_highest[b].code;
           out.plateau = true;
@@ -108,6 +112,7 @@ RegionLevels::RegionLevels(const AnalysisInput& input, std::size_t region, const
     level.variance = flat.variance;
     if (!level.dark.variance.empty()) level.dark_variance = dark_variance(level.dark.variance);
     level.saturated_fraction = saturated_share(flat);
+    for (const auto& [dark, weight] : level.dark.mean) level.saturated_fraction -= weight * saturated_share(summary(dark));
     levels_.push_back(level);
   }
   std::stable_sort(levels_.begin(), levels_.end(), [](const Level& a, const Level& b) { return a.signal < b.signal; });
@@ -168,10 +173,25 @@ double RegionLevels::mean_uncertainty(std::size_t series) const {
   if (!s.variance)
     for (std::size_t b = 0; b < s.block_spread.size(); ++b)
       noise += s.block_pixels[b] * s.block_spread[b] * s.block_spread[b] / s.pixels;
+  if (s.row_noise_variance) between += std::max(0.0, *s.row_noise_variance) / s.rows;
   return std::sqrt(noise / (s.pixels * s.frames) + between / s.frames);
 }
 
-/// Signal of the block where `kSaturatedShare` of its pixels show the top code, infinite if none of the levels gets there.
+/// Share of a block's samples at the top code.
+double RegionLevels::block_share(std::size_t series, std::size_t block) const {
+  const RegionSummary& s = summary(series);
+  return share_at(s.block_highest[block], *codes_.top_code, s.block_pixels[block] * s.frames);
+}
+
+/// The same of the matching darks: pixels that are stuck there tell nothing of the light.
+double RegionLevels::dark_share(const Level& level, std::size_t block) const {
+  double share = 0;
+  for (const auto& [series, weight] : level.dark.mean) share += weight * block_share(series, block);
+  return share;
+}
+
+/// Signal of the block where `kSaturatedShare` of its pixels show the top code; infinite if none of the levels gets there, NaN
+/// if all of them do.
 /// Between the last level below and the first level above, the share is that of a normal distribution cut off at the top
 /// code, whose spread is the temporal noise, scaled as shot noise from the level below, and the unevenness inside the
 /// block; where that leaves the interval of the two levels, the share is interpolated on a straight line.
@@ -181,15 +201,14 @@ double RegionLevels::saturation_signal(std::size_t block, const std::vector<cons
     const RegionSummary& flat = summary(level->series);
     double dark = 0;
     for (const auto& [series, weight] : level->dark.mean) dark += weight * summary(series).block_mean[block];
-    const double samples = flat.block_pixels[block] * flat.frames;
-    const double share = share_at(flat.block_highest[block], *codes_.top_code, samples);
+    const double share = block_share(level->series, block) - dark_share(*level, block);
     if (share < kSaturatedShare) {
       below = level;
       continue;
     }
     const double upper = flat.block_mean[block] - dark;
     const double top = *codes_.top_code - 0.5 * codes_.step_dn - dark;
-    if (below == nullptr) return noise = 0, upper;
+    if (below == nullptr) return std::numeric_limits<double>::quiet_NaN();
     const RegionSummary& lower_flat = summary(below->series);
     double lower_dark = 0;
     for (const auto& [series, weight] : below->dark.mean) lower_dark += weight * summary(series).block_mean[block];
@@ -208,8 +227,7 @@ double RegionLevels::saturation_signal(std::size_t block, const std::vector<cons
     }
     if (signal >= lower && signal <= (share < 0.5 ? upper : top)) return signal;
     noise = std::sqrt(temporal + spread_square);
-    const double lower_share = share_at(lower_flat.block_highest[block], *codes_.top_code,
-                                        lower_flat.block_pixels[block] * lower_flat.frames);
+    const double lower_share = block_share(below->series, block) - dark_share(*below, block);
     return lower + (kSaturatedShare - lower_share) / (share - lower_share) * (upper - lower);
   }
   return std::numeric_limits<double>::infinity();
@@ -230,11 +248,21 @@ void RegionLevels::find_range_top() {
   if (!codes_.top_code) return;
   std::vector<double> signals;
   std::vector<double> noises;
+  std::size_t without_level_below = 0;
   for (std::size_t b = 0; b < summary(levels_.front().series).block_mean.size(); ++b) {
     double noise = 0;
-    signals.push_back(saturation_signal(b, rising, noise));
+    const double signal = saturation_signal(b, rising, noise);
+    if (std::isnan(signal)) ++without_level_below;
+    signals.push_back(signal);
     noises.push_back(noise);
   }
+  if (2 * without_level_below >= signals.size()) {
+    top_.saturates = true;
+    top_.unresolved = "every level is saturated; the upper limit is the signal of the darkest";
+    top_.signal_dn = levels_.front().signal;
+    return;
+  }
+  std::erase_if(signals, [](double signal) { return std::isnan(signal); });
   const double middle = median(signals);
   if (!std::isfinite(middle)) return;
   top_.signal_dn = middle;
@@ -247,6 +275,7 @@ void RegionLevels::find_range_top() {
   // pixels, evenly distributed, for what is not known of the shape of the cut distribution.
   const double blocks = 1.2533 * 1.4826 * median(deviations) / std::sqrt(static_cast<double>(signals.size()));
   top_.uncertainty_dn = std::hypot(blocks, 0.5 * top_.noise_dn / std::sqrt(3.0));
+  if (top_.uncertainty_dn <= 0) top_.unresolved = "the frames show no noise, so nothing is known of the uncertainty";
 }
 
 }  // namespace evenfield

@@ -2,6 +2,7 @@
 /// The light levels of one region: every flat series with its matching dark, its signal, and what it may be used for.
 
 #include <optional>
+#include <string>
 #include <vector>
 
 #include "analyse/analysis_input.h"
@@ -26,13 +27,14 @@ struct Level {
   double signal = 0;                 ///< mean less dark mean [DN]
   std::optional<double> variance;    ///< temporal [DN^2]
   std::optional<double> dark_variance;
-  double saturated_fraction = 0;     ///< share of pixels at the top code
+  double saturated_fraction = 0;     ///< share of pixels at the top code, those that are there without light less
 };
 
 /// The upper end of what can be used.
 struct RangeTop {
   double signal_dn = 0;              ///< median of blocks at saturation; else the highest level
   bool saturates = false;
+  std::string unresolved;            ///< why a saturation that was reached has no value
   double uncertainty_dn = 0;         ///< of a saturation
   double noise_dn = 0;               ///< standard deviation of a pixel there
 };
@@ -75,6 +77,8 @@ class RegionLevels {
   void find_scatter();
   void find_range_top();
   double saturation_signal(std::size_t block, const std::vector<const Level*>& rising, double& noise) const;
+  double block_share(std::size_t series, std::size_t block) const;
+  double dark_share(const Level& level, std::size_t block) const;
 
   const AnalysisInput& input_;
   std::size_t region_;

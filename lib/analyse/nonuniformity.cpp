@@ -2,6 +2,7 @@
 
 #include <cmath>
 
+#include "model/quantization.h"
 #include "model/spatial.h"
 
 namespace evenfield {
@@ -9,8 +10,14 @@ namespace {
 
 SpatialEstimate spatial_estimate(const RegionLevels& levels, std::size_t series) {
   const RegionSummary& s = levels.summary(series);
-  const double variance =
-      spatial_variance_variance(*s.spatial_variance, *s.variance, {s.pixels, static_cast<double>(s.frames)});
+  const double frames = s.frames;
+  double variance = spatial_variance_variance(*s.spatial_variance, *s.variance, {s.pixels, frames});
+  // Noise that rows share is averaged over frames but not over the pixels of a row: the same closed form once more, for
+  // the rows' means.
+  if (s.row_noise_variance && *s.row_noise_variance > 0 && s.rows > 1) {
+    const double pattern = s.row_pattern_variance - *s.row_noise_variance / frames;
+    variance += spatial_variance_variance(pattern, *s.row_noise_variance, {static_cast<double>(s.rows), frames});
+  }
   return {*s.spatial_variance, std::sqrt(variance), series};
 }
 
@@ -35,9 +42,13 @@ Nonuniformity find_nonuniformity(const RegionLevels& levels) {
   std::vector<std::size_t> darks;
   for (std::size_t s = 0; s < levels.input().series.size(); ++s)
     if (levels.input().series[s].conditions.kind != SeriesKind::flat) darks.push_back(s);
-  if (const auto best = best_dark(levels, darks))
-    out.dark = spatial_estimate(levels, *best);
-  else
+  const double step = levels.codes().step_dn;
+  if (const auto best = best_dark(levels, darks)) {
+    if (*levels.summary(*best).variance <= kUnresolvedVariance * step * step)
+      out.dark_reason = "the step of the codes hides the noise, and with it the pattern of pixels below a step";
+    else
+      out.dark = spatial_estimate(levels, *best);
+  } else
     out.dark_reason = "needs a dark or bias series of two frames or more";
 
   const Level* nearest = nullptr;

@@ -60,21 +60,23 @@ Quantity root_of_square(std::string name,
   q.method = std::move(method);
   if (square <= 0) {
     const double one_sided = normal_quantile(kCoverage);
-    q.high95 = std::sqrt(std::max(0.0, square + one_sided * square_uncertainty)) / divisor;
+    // Counted from zero: a square that came out far below it by chance must not promise that there is no pattern at all.
+    q.high95 = std::sqrt(one_sided * square_uncertainty) / divisor;
     q.note = "not resolved: less than the temporal noise can hide; the upper limit is one-sided";
     if (!note.empty()) q.note += "; " + note;
     return q;
   }
   const double k = coverage_factor(kCoverage, std::nullopt);
   const double value = std::sqrt(square) / divisor;
-  const double own = square_uncertainty / (2 * std::sqrt(square)) / divisor;
+  const double low = std::sqrt(std::max(0.0, square - k * square_uncertainty)) / divisor;
+  const double high = std::sqrt(square + k * square_uncertainty) / divisor;
+  // Half the interval: u(s^2) / (2 s) far from zero, where that quotient would grow without end near it.
+  const double own = (high - low) / (2 * k);
   const double scale = value * divisor_relative_uncertainty;
   q.value = value;
   q.statistical_uncertainty = std::hypot(own, scale);
   q.standard_uncertainty = q.statistical_uncertainty;
   q.common_uncertainty = 0.0;
-  const double low = std::sqrt(std::max(0.0, square - k * square_uncertainty)) / divisor;
-  const double high = std::sqrt(square + k * square_uncertainty) / divisor;
   q.low95 = std::max(0.0, value - std::hypot(value - low, k * scale));
   q.high95 = value + std::hypot(high - value, k * scale);
   q.note = std::move(note);

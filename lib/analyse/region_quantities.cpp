@@ -4,6 +4,7 @@
 #include <cmath>
 
 #include "model/gum.h"
+#include "model/student.h"
 
 namespace evenfield {
 namespace {
@@ -162,6 +163,13 @@ void saturation(Builder& b, const GainAndNoise& gain) {
     b.unknown("saturation_capacity_e", "needs flats and matching darks").condition = condition;
     return;
   }
+  if (top.saturates && !top.unresolved.empty()) {
+    Quantity& dn = b.unknown("saturation_dn", top.unresolved);
+    dn.condition = condition;
+    if (top.signal_dn > 0) dn.high95 = top.signal_dn;
+    b.unknown("saturation_capacity_e", top.unresolved).condition = condition;
+    return;
+  }
   if (!top.saturates) {
     const std::string reason = b.levels().codes().top_code
                                    ? "no level has 0.2 % of its pixels at the top code; the lower limit is the brightest level's signal"
@@ -171,7 +179,9 @@ void saturation(Builder& b, const GainAndNoise& gain) {
     if (top.signal_dn > 0) dn.low95 = top.signal_dn;
     Quantity& e = b.unknown("saturation_capacity_e", reason);
     e.condition = condition;
-    if (gain.gain && top.signal_dn > 0) e.low95 = top.signal_dn / gain.gain->value;
+    // One-sided 95 % for the gain that turns DN into electrons.
+    if (gain.gain && top.signal_dn > 0)
+      e.low95 = top.signal_dn / (gain.gain->value + student_quantile(0.95, gain.gain->degrees_of_freedom) * gain.gain->statistical_uncertainty);
     return;
   }
   const std::string method =
@@ -194,7 +204,8 @@ void linearity(Builder& b, const Response& response) {
                         "mean |deviation| from the line weighted 1/signal^2 between 5 and 95 % of the range, after EMVA 1288 (from memory)",
                         response.note);
   q.condition = condition;
-  q.low95 = std::max(0.0, *q.low95);
+  // A mean of absolute deviations counts noise as deviation: the lower end allows for all of it.
+  q.low95 = std::max(0.0, *q.low95 - response.floor_percent);
 }
 
 void pattern(Builder& b, const GainAndNoise& gain, const Nonuniformity& pattern) {

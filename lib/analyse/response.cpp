@@ -1,5 +1,6 @@
 #include "analyse/response.h"
 
+#include <algorithm>
 #include <cmath>
 
 #include "base/text.h"
@@ -57,6 +58,11 @@ Response find_response(const RegionLevels& levels) {
                                         std::to_string(points.size());
     return out;
   }
+  if (std::all_of(points.begin(), points.end(), [&](const ResponsePoint& p) { return p.exposure == points.front().exposure; })) {
+    out.levels.clear();
+    out.reason = "needs levels of different exposure_s x light; all have the same";
+    return out;
+  }
   const auto line = fit_linearity(points);
   if (!line) {
     out.levels.clear();
@@ -78,8 +84,8 @@ Response find_response(const RegionLevels& levels) {
   }
   out.error_percent = Estimate{line->error_percent, propagated(points, statistical, line->error_percent),
                                propagated(points, common, line->error_percent), std::nullopt};
-  const double floor = linearity_floor_percent(std::sqrt(relative / static_cast<double>(points.size())));
-  out.note = std::to_string(points.size()) + " levels; noise of light and camera alone would show " + to_text(floor, 2) +
+  out.floor_percent = linearity_floor_percent(std::sqrt(relative / static_cast<double>(points.size())));
+  out.note = std::to_string(points.size()) + " levels; noise of light and camera alone would show " + to_text(out.floor_percent, 2) +
              " %; camera and lamp are not told apart";
   return out;
 }

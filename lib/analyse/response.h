@@ -18,6 +18,7 @@ struct Response {
   std::optional<Linearity> line;
   std::vector<std::size_t> levels;        ///< indices into RegionLevels::levels() of the line's points
   std::optional<Estimate> error_percent;  ///< LE
+  double floor_percent = 0;               ///< what noise alone would show of it
   std::string reason;                     ///< why there is none
   std::string note;
 };

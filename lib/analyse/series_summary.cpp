@@ -46,8 +46,9 @@ double scatter(const std::vector<double>& values) {
   return squares / (n - 1);
 }
 
-/// Temporal variance shared by the pixels of a row: row means with the frame's and the row's own mean taken out.
-double row_noise(const RegionStatistics& region, const RegionSummary& s, double dark_level) {
+/// Temporal variance shared by the pixels of a row: row means with the frame's and the row's own mean taken out. And the
+/// variance of the rows' means over frames.
+void find_row_noise(const RegionStatistics& region, double dark_level, RegionSummary& s) {
   const auto rows = static_cast<std::size_t>(region.rect.height);
   const auto frames = static_cast<std::size_t>(s.frames);
   const double width = region.rect.width;
@@ -56,14 +57,18 @@ double row_noise(const RegionStatistics& region, const RegionSummary& s, double 
     return s.scaled ? (mean - dark_level) / s.scales[f] : mean - s.frame_means[f];
   };
   double squares = 0;
+  std::vector<double> means;
   for (std::size_t row = 0; row < rows; ++row) {
     double mean = 0;
     for (std::size_t f = 0; f < frames; ++f) mean += value(f, row);
     mean /= static_cast<double>(frames);
     for (std::size_t f = 0; f < frames; ++f) squares += (value(f, row) - mean) * (value(f, row) - mean);
+    means.push_back(mean);
   }
   const double dof = static_cast<double>((rows - 1) * (frames - 1));
-  return dof > 0 ? squares / dof - *s.variance / width : 0.0;
+  s.rows = region.rect.height;
+  s.row_noise_variance = dof > 0 ? squares / dof - *s.variance / width : 0.0;
+  if (rows > 1) s.row_pattern_variance = scatter(means);
 }
 
 }  // namespace
@@ -139,8 +144,9 @@ RegionSummary summarize(const RegionStatistics& region, std::optional<double> da
   if (frames > 1 && s.dof > 0) {
     s.variance = squares / s.dof;
     s.spatial_variance = spatial / (s.pixels * s.frames * s.frames) - *s.variance / s.frames;
-    s.frame_mean_variance = scatter(s.frame_means) - *s.variance / s.pixels;
-    s.row_noise_variance = row_noise(region, s, dark_level.value_or(0.0));
+    find_row_noise(region, dark_level.value_or(0.0), s);
+    s.frame_mean_variance =
+        scatter(s.frame_means) - *s.variance / s.pixels - std::max(0.0, *s.row_noise_variance) / s.rows;
   }
   return s;
 }

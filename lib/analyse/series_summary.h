@@ -34,8 +34,11 @@ struct RegionSummary {
   std::vector<double> frame_means;      ///< DN
   std::vector<double> scales;           ///< a_f; all 1 where offsets were taken out instead
   bool scaled = false;                  ///< scales, not offsets, were taken out
-  std::optional<double> frame_mean_variance;  ///< sample variance of the frame means, temporal noise of pixels less [DN^2]
+  /// Sample variance of the frame means less what noise of pixels and rows makes of it [DN^2].
+  std::optional<double> frame_mean_variance;
   std::optional<double> row_noise_variance;   ///< temporal variance that a row shares, pixels' own noise less [DN^2]
+  double row_pattern_variance = 0;            ///< of the rows' means over all frames, noise included [DN^2]
+  int rows = 0;
   Extreme lowest, highest;
   std::int64_t hits = 0;
 };

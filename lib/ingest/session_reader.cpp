@@ -21,6 +21,7 @@ constexpr std::int64_t kMaxInt = std::numeric_limits<int>::max();
 constexpr NumberRange kAboveZero{0, kInfinity, true};
 constexpr NumberRange kFromZero{0, kInfinity};
 constexpr NumberRange kFraction{0, 1};
+constexpr double kLongestExposure_s = 1e6;  // eleven days
 constexpr NumberRange kCelsius{-273.15, kInfinity, true};
 
 template <class T, class U>
@@ -163,7 +164,7 @@ SeriesTable read_series(TomlTable table, const std::optional<Light>& session_lig
   table.require("kind");
   const std::string kind = table.one_of("kind", {"flat", "dark", "bias"}).value_or("flat");
   conditions.kind = kind == "flat" ? SeriesKind::flat : kind == "dark" ? SeriesKind::dark : SeriesKind::bias;
-  conditions.exposure_s = table.number("exposure_s", kFromZero);
+  conditions.exposure_s = table.number("exposure_s", NumberRange{0.0, kLongestExposure_s});
   if (conditions.kind == SeriesKind::bias) {
     if (conditions.exposure_s.value_or(0) != 0)
       table.fail("exposure_s",

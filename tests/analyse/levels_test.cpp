@@ -53,7 +53,9 @@ TEST_CASE("a session that never saturates gives a lower limit in place of satura
   const Measurement m = measure_scene(scene);
   const Quantity& well = quantity(m.result, "saturation_capacity_e");
   CHECK(!well.value);
-  CHECK(well.low95 == doctest::Approx(4000).epsilon(0.01));
+  // The signal that was reached, less what the gain's own uncertainty allows.
+  CHECK(*well.low95 < 4000);
+  CHECK(*well.low95 > 3850);
   CHECK(quantity(m.result, "linearity_error_percent").value);
 }
 
