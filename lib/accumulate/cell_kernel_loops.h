@@ -33,47 +33,26 @@ bool holds_whole_codes(const CellInput& cell) {
   return true;
 }
 
+/// Range of the cell's pixels, which go into `work` on the way: whole ones as they are, real ones as doubles.
 template <class T>
-Range<T> range_of(const CellInput& cell) {
+Range<T> gather(const CellInput& cell, Workspace<Centred<T>>& work) {
   if constexpr (kWhole<T>) {
-    return whole_range<T>(cell);
+    return whole_gather<T>(cell, work);
   } else {
     Range<T> range{*row_of<T>(cell, 0, 0), *row_of<T>(cell, 0, 0)};
-    for (int f = 0; f < cell.frames; ++f)
-      for (int y = 0; y < cell.height; ++y) {
+    for (int f = 0; f < cell.frames; ++f) {
+      double* to = work.centred[static_cast<std::size_t>(f)].data();
+      for (int y = 0; y < cell.height; ++y, to += cell.width) {
         const T* row = row_of<T>(cell, f, y);
         for (int x = 0; x < cell.width; ++x) {
           range.low = row[x] < range.low ? row[x] : range.low;
           range.high = row[x] > range.high ? row[x] : range.high;
+          to[x] = static_cast<double>(row[x]);
         }
       }
+    }
     return range;
   }
-}
-
-template <class T>
-std::int64_t count_of(const CellInput& cell, T code) {
-  // Counted in the pixel's own width, which vectorizes; a row of a cell has at most 128 pixels.
-  using Count = std::conditional_t<std::is_integral_v<T> && sizeof(T) == 1, std::uint8_t,
-                                   std::conditional_t<std::is_integral_v<T> && sizeof(T) == 2, std::uint16_t, std::uint32_t>>;
-  std::int64_t total = 0;
-  for (int f = 0; f < cell.frames; ++f)
-    for (int y = 0; y < cell.height; ++y) {
-      const T* row = row_of<T>(cell, f, y);
-      Count count = 0;
-      for (int x = 0; x < cell.width; ++x) count = static_cast<Count>(count + (row[x] == code ? 1 : 0));
-      total += count;
-    }
-  return total;
-}
-
-/// An extreme that some other cell of the block is known to exceed is not worth counting.
-template <class T>
-void find_extremes(const CellInput& cell, Range<T> range, CellStatistics& out) {
-  out.lowest = {static_cast<double>(range.low), 0};
-  out.highest = {static_cast<double>(range.high), 0};
-  if (!(out.lowest.code > cell.known_lowest)) out.lowest.count = count_of<T>(cell, range.low);
-  if (!(out.highest.code < cell.known_highest)) out.highest.count = count_of<T>(cell, range.high);
 }
 
 template <class T>
@@ -85,19 +64,41 @@ double centre_of(Range<T> range) {
                                  : static_cast<double>(range.low);
 }
 
-template <class T>
-void centre_pixels(const CellInput& cell, double centre, Workspace<Centred<T>>& work) {
-  if constexpr (kWhole<T>) {
-    whole_centre<T>(cell, static_cast<int>(centre), work);
+template <class C>
+void centre_pixels(const CellInput& cell, double centre, Workspace<C>& work) {
+  const int pixels = cell.width * cell.height;
+  if constexpr (std::is_same_v<C, std::int16_t>) {
+    whole_centre(cell.frames, pixels, static_cast<int>(centre), work);
   } else {
     for (int f = 0; f < cell.frames; ++f) {
-      double* to = work.centred[static_cast<std::size_t>(f)].data();
-      for (int y = 0; y < cell.height; ++y, to += cell.width) {
-        const T* row = row_of<T>(cell, f, y);
-        for (int x = 0; x < cell.width; ++x) to[x] = static_cast<double>(row[x]) - centre;
-      }
+      double* d = work.centred[static_cast<std::size_t>(f)].data();
+      for (int p = 0; p < pixels; ++p) d[p] -= centre;
     }
   }
+}
+
+/// How many pixels are `code`.
+template <class C>
+std::int64_t count_of(const CellInput& cell, double code, double centre, const Workspace<C>& work) {
+  const int pixels = cell.width * cell.height;
+  if constexpr (std::is_same_v<C, std::int16_t>) {
+    return whole_count(work, cell.frames, pixels, static_cast<std::int16_t>(code - centre));
+  } else {
+    std::int64_t total = 0;
+    for (int f = 0; f < cell.frames; ++f)
+      for (int p = 0; p < pixels; ++p)
+        total += work.centred[static_cast<std::size_t>(f)][static_cast<std::size_t>(p)] == code - centre ? 1 : 0;
+    return total;
+  }
+}
+
+/// An extreme that some other cell of the block is known to exceed is not worth counting.
+template <class C>
+void find_extremes(const CellInput& cell, double low, double high, const Workspace<C>& work, CellStatistics& out) {
+  out.lowest = {low, 0};
+  out.highest = {high, 0};
+  if (!(low > cell.known_lowest)) out.lowest.count = count_of(cell, low, out.centre, work);
+  if (!(high < cell.known_highest)) out.highest.count = count_of(cell, high, out.centre, work);
 }
 
 inline double real_sum(const double* row, int width) {
@@ -227,12 +228,14 @@ void measure_cell(const CellInput& cell, CellTotals& totals, CellStatistics& out
     out.bad_frame = frame_not_finite<T>(cell);
     if (out.bad_frame >= 0) return;
   }
-  const Range<T> range = range_of<T>(cell);
-  find_extremes(cell, range, out);
+  const Range<T> range = gather<T>(cell, work);
+  const auto low = static_cast<double>(range.low);
+  const auto high = static_cast<double>(range.high);
   out.centre = centre_of(range);
-  centre_pixels<T>(cell, out.centre, work);
-  const double up = static_cast<double>(range.high) - out.centre;
-  const double down = out.centre - static_cast<double>(range.low);
+  centre_pixels(cell, out.centre, work);
+  find_extremes(cell, low, high, work, out);
+  const double up = high - out.centre;
+  const double down = out.centre - low;
   const double magnitude = up > down ? up : down;
   sums_and_gram(cell, magnitude, work, out);
   if (cell.hit_threshold > 0 && cell.frames > 1)

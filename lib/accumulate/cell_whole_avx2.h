@@ -34,59 +34,62 @@ inline std::int64_t sum_of_32(__m256i v) {
 }
 
 template <class T>
-Range<T> whole_range(const CellInput& cell) {
+Range<T> whole_gather(const CellInput& cell, Workspace<std::int16_t>& work) {
   Range<T> range{*row_of<T>(cell, 0, 0), *row_of<T>(cell, 0, 0)};
   const int vectors = cell.width / kLane * kLane;
-  if (vectors > 0) {
-    __m256i low = widened(row_of<T>(cell, 0, 0));
-    __m256i high = low;
-    for (int f = 0; f < cell.frames; ++f)
-      for (int y = 0; y < cell.height; ++y) {
-        const T* row = row_of<T>(cell, f, y);
-        for (int x = 0; x < vectors; x += kLane) {
-          const __m256i v = widened(row + x);
-          low = kUnsigned16<T> ? _mm256_min_epu16(low, v) : _mm256_min_epi16(low, v);
-          high = kUnsigned16<T> ? _mm256_max_epu16(high, v) : _mm256_max_epi16(high, v);
-        }
-      }
-    using Wide = std::conditional_t<kUnsigned16<T>, std::uint16_t, std::int16_t>;
-    alignas(32) Wide lows[kLane];
-    alignas(32) Wide highs[kLane];
-    _mm256_store_si256(reinterpret_cast<__m256i*>(lows), low);
-    _mm256_store_si256(reinterpret_cast<__m256i*>(highs), high);
-    for (int i = 0; i < kLane; ++i) {
-      range.low = static_cast<T>(lows[i]) < range.low ? static_cast<T>(lows[i]) : range.low;
-      range.high = static_cast<T>(highs[i]) > range.high ? static_cast<T>(highs[i]) : range.high;
-    }
-  }
-  for (int f = 0; f < cell.frames; ++f)
-    for (int y = 0; y < cell.height; ++y) {
-      const T* row = row_of<T>(cell, f, y);
-      for (int x = vectors; x < cell.width; ++x) {
-        range.low = row[x] < range.low ? row[x] : range.low;
-        range.high = row[x] > range.high ? row[x] : range.high;
-      }
-    }
-  return range;
-}
-
-template <class T>
-void whole_centre(const CellInput& cell, int centre, Workspace<std::int16_t>& work) {
-  const auto shift = static_cast<std::uint16_t>(centre);
-  const __m256i shifts = _mm256_set1_epi16(static_cast<std::int16_t>(shift));
-  const int vectors = cell.width / kLane * kLane;
-  const int pixels = cell.width * cell.height;
+  __m256i low = _mm256_set1_epi16(static_cast<std::int16_t>(range.low));
+  __m256i high = low;
   for (int f = 0; f < cell.frames; ++f) {
     std::int16_t* to = work.centred[static_cast<std::size_t>(f)].data();
     for (int y = 0; y < cell.height; ++y, to += cell.width) {
       const T* row = row_of<T>(cell, f, y);
-      for (int x = 0; x < vectors; x += kLane)
-        _mm256_storeu_si256(reinterpret_cast<__m256i*>(to + x), _mm256_sub_epi16(widened(row + x), shifts));
-      for (int x = vectors; x < cell.width; ++x)
-        to[x] = static_cast<std::int16_t>(static_cast<std::uint16_t>(static_cast<std::uint16_t>(row[x]) - shift));
+      for (int x = 0; x < vectors; x += kLane) {
+        const __m256i v = widened(row + x);
+        low = kUnsigned16<T> ? _mm256_min_epu16(low, v) : _mm256_min_epi16(low, v);
+        high = kUnsigned16<T> ? _mm256_max_epu16(high, v) : _mm256_max_epi16(high, v);
+        _mm256_storeu_si256(reinterpret_cast<__m256i*>(to + x), v);
+      }
+      for (int x = vectors; x < cell.width; ++x) {
+        range.low = row[x] < range.low ? row[x] : range.low;
+        range.high = row[x] > range.high ? row[x] : range.high;
+        to[x] = static_cast<std::int16_t>(row[x]);
+      }
     }
-    for (int p = pixels; p < padded(pixels); ++p) work.centred[static_cast<std::size_t>(f)][static_cast<std::size_t>(p)] = 0;
   }
+  using Wide = std::conditional_t<kUnsigned16<T>, std::uint16_t, std::int16_t>;
+  alignas(32) Wide lows[kLane];
+  alignas(32) Wide highs[kLane];
+  _mm256_store_si256(reinterpret_cast<__m256i*>(lows), low);
+  _mm256_store_si256(reinterpret_cast<__m256i*>(highs), high);
+  for (int i = 0; i < kLane; ++i) {
+    range.low = static_cast<T>(lows[i]) < range.low ? static_cast<T>(lows[i]) : range.low;
+    range.high = static_cast<T>(highs[i]) > range.high ? static_cast<T>(highs[i]) : range.high;
+  }
+  return range;
+}
+
+inline void whole_centre(int frames, int pixels, int centre, Workspace<std::int16_t>& work) {
+  const __m256i shifts = _mm256_set1_epi16(static_cast<std::int16_t>(centre));
+  for (int f = 0; f < frames; ++f) {
+    std::int16_t* d = work.centred[static_cast<std::size_t>(f)].data();
+    for (int p = 0; p < padded(pixels); p += kLane)
+      _mm256_store_si256(reinterpret_cast<__m256i*>(d + p), _mm256_sub_epi16(load(d + p), shifts));
+    for (int p = pixels; p < padded(pixels); ++p) d[p] = 0;
+  }
+}
+
+inline std::int64_t whole_count(const Workspace<std::int16_t>& work, int frames, int pixels, std::int16_t code) {
+  const __m256i codes = _mm256_set1_epi16(code);
+  const int vectors = pixels / kLane * kLane;
+  std::int64_t total = 0;
+  for (int f = 0; f < frames; ++f) {
+    const std::int16_t* d = work.centred[static_cast<std::size_t>(f)].data();
+    __m256i count = _mm256_setzero_si256();  // a lane counts at most 128
+    for (int p = 0; p < vectors; p += kLane) count = _mm256_sub_epi16(count, _mm256_cmpeq_epi16(load(d + p), codes));
+    total += sum_of_32(_mm256_madd_epi16(count, _mm256_set1_epi16(1)));
+    for (int p = vectors; p < pixels; ++p) total += d[p] == code ? 1 : 0;
+  }
+  return total;
 }
 
 inline std::int32_t whole_sum(const std::int16_t* row, int width) {

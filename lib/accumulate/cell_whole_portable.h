@@ -5,37 +5,48 @@
 
 namespace {
 
+/// Lowest and highest pixel; on the way the pixels' bits go into `work`, row by row without gaps, where all that follows is
+/// close together.
 template <class T>
-Range<T> whole_range(const CellInput& cell) {
+Range<T> whole_gather(const CellInput& cell, Workspace<std::int16_t>& work) {
   Range<T> range{*row_of<T>(cell, 0, 0), *row_of<T>(cell, 0, 0)};
-  for (int f = 0; f < cell.frames; ++f)
-    for (int y = 0; y < cell.height; ++y) {
+  for (int f = 0; f < cell.frames; ++f) {
+    std::int16_t* to = work.centred[static_cast<std::size_t>(f)].data();
+    for (int y = 0; y < cell.height; ++y, to += cell.width) {
       const T* row = row_of<T>(cell, f, y);
       T low = range.low;
       T high = range.high;
       for (int x = 0; x < cell.width; ++x) {
         low = row[x] < low ? row[x] : low;
         high = row[x] > high ? row[x] : high;
+        to[x] = static_cast<std::int16_t>(row[x]);
       }
       range = {low, high};
     }
+  }
   return range;
 }
 
-/// pixel - centre modulo 2^16, which is exact since the difference fits.
-template <class T>
-void whole_centre(const CellInput& cell, int centre, Workspace<std::int16_t>& work) {
+/// pixel - centre modulo 2^16, which is exact since the difference fits; zeros behind the pixels.
+inline void whole_centre(int frames, int pixels, int centre, Workspace<std::int16_t>& work) {
   const auto shift = static_cast<std::uint16_t>(centre);
-  const int pixels = cell.width * cell.height;
-  for (int f = 0; f < cell.frames; ++f) {
-    std::int16_t* to = work.centred[static_cast<std::size_t>(f)].data();
-    for (int y = 0; y < cell.height; ++y, to += cell.width) {
-      const T* row = row_of<T>(cell, f, y);
-      for (int x = 0; x < cell.width; ++x)
-        to[x] = static_cast<std::int16_t>(static_cast<std::uint16_t>(static_cast<std::uint16_t>(row[x]) - shift));
-    }
-    for (int p = pixels; p < padded(pixels); ++p) work.centred[static_cast<std::size_t>(f)][static_cast<std::size_t>(p)] = 0;
+  for (int f = 0; f < frames; ++f) {
+    std::int16_t* d = work.centred[static_cast<std::size_t>(f)].data();
+    for (int p = 0; p < pixels; ++p) d[p] = static_cast<std::int16_t>(static_cast<std::uint16_t>(static_cast<std::uint16_t>(d[p]) - shift));
+    for (int p = pixels; p < padded(pixels); ++p) d[p] = 0;
   }
+}
+
+/// How many centred pixels are `code`.
+inline std::int64_t whole_count(const Workspace<std::int16_t>& work, int frames, int pixels, std::int16_t code) {
+  std::int64_t total = 0;
+  for (int f = 0; f < frames; ++f) {
+    const std::int16_t* d = work.centred[static_cast<std::size_t>(f)].data();
+    std::uint16_t count = 0;  // at most 2048
+    for (int p = 0; p < pixels; ++p) count = static_cast<std::uint16_t>(count + (d[p] == code ? 1 : 0));
+    total += count;
+  }
+  return total;
 }
 
 /// Sum of a row, at most 128 terms.
