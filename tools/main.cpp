@@ -58,19 +58,25 @@ int run(int argc, char** argv) {
   std::vector<std::string> names;
   for (const Command& command : kCommands) names.emplace_back(command.name);
   std::string hint;
-  for (const std::string& name : near_names(word, names)) hint += (hint.empty() ? "; did you mean " : " or ") + name;
-  return report_error({Errc::usage, {}, "found the command '" + std::string(word) + "', expected measure or synth" + hint + "; see evenfield --help"});
+  for (const std::string& name : near_names(word, names))
+    hint += (hint.empty() ? "; did you mean " : " or ") + name;
+  return report_error({Errc::usage,
+                       {},
+                       "found the command '" + std::string(word) + "', expected measure or synth" + hint +
+                           "; see evenfield --help"});
 }
 
 }  // namespace
 
 int main(int argc, char** argv) {
   // The first signal asks the work to stop and clean up; a second one ends the program at once.
-  struct sigaction action{};
+  struct sigaction action {};
   action.sa_handler = on_signal;
   action.sa_flags = static_cast<int>(SA_RESETHAND);
   for (const int signal : {SIGINT, SIGTERM, SIGHUP}) sigaction(signal, &action, nullptr);
-  std::signal(SIGPIPE, SIG_IGN);  // NOLINT(bugprone-signal-handler): a closed pipe is an output error, not a silent end
+  std::signal(
+      SIGPIPE,
+      SIG_IGN);  // NOLINT(bugprone-signal-handler): a closed pipe is an output error, not a silent end
   try {
     return run(argc, argv);
   } catch (const std::bad_alloc&) {

@@ -18,7 +18,8 @@ namespace {
 
 using Hash = std::array<std::uint64_t, 2>;
 
-/// What one band gives: per cell its statistics in each group and its squared totals, per frame its part of the hash.
+/// What one band gives: per cell its statistics in each group and its squared totals, per frame its part of
+/// the hash.
 struct BandResult {
   std::vector<CellStatistics> cells;  ///< [cell][group]
   std::vector<CellSquares> squares;   ///< [cell]
@@ -28,9 +29,10 @@ struct BandResult {
 
 /// What one thread needs while it works on a band.
 struct BandBuffers {
-  std::vector<std::byte> rows;      ///< [frame of the group][row][column]
-  std::vector<CellTotals> totals;   ///< [cell]
-  std::vector<std::vector<std::pair<double, double>>> known;  ///< [region][block] lowest and highest code seen by this thread
+  std::vector<std::byte> rows;     ///< [frame of the group][row][column]
+  std::vector<CellTotals> totals;  ///< [cell]
+  std::vector<std::vector<std::pair<double, double>>>
+      known;  ///< [region][block] lowest and highest code seen by this thread
 };
 
 class Accumulator {
@@ -125,15 +127,18 @@ Status Accumulator::measure(int band_index, BandBuffers& buffers, BandResult& ou
       const Cell& cell = band.cells[c];
       input.width = cell.width;
       for (int f = 0; f < sizes_[g]; ++f)
-        input.pixels[static_cast<std::size_t>(f)] = buffers.rows.data() + frame_bytes * static_cast<std::size_t>(f) +
+        input.pixels[static_cast<std::size_t>(f)] = buffers.rows.data() +
+                                                    frame_bytes * static_cast<std::size_t>(f) +
                                                     pixel_bytes * static_cast<std::size_t>(cell.x);
       CellStatistics& statistics = out.cells[c * sizes_.size() + g];
-      auto& [lowest, highest] = buffers.known[static_cast<std::size_t>(cell.region)][static_cast<std::size_t>(cell.block)];
+      auto& [lowest, highest] =
+          buffers.known[static_cast<std::size_t>(cell.region)][static_cast<std::size_t>(cell.block)];
       input.known_lowest = lowest;
       input.known_highest = highest;
       kernels_.measure(input, buffers.totals[c], statistics);
-      if (statistics.bad_frame >= 0) return frames_.error_at(first + statistics.bad_frame,
-                                                             "found a pixel that is not a finite number, expected finite pixels");
+      if (statistics.bad_frame >= 0)
+        return frames_.error_at(first + statistics.bad_frame,
+                                "found a pixel that is not a finite number, expected finite pixels");
       lowest = std::min(lowest, statistics.lowest.code);
       highest = std::max(highest, statistics.highest.code);
     }
@@ -174,8 +179,10 @@ void Accumulator::add_cell(const Band& band, const Cell& cell, const BandResult&
       sums[i] += sum + pixels * shift;
       for (int j = i; j < frames; ++j)
         gram[pair_index(i, j, frames)] += s.gram[pair_index(i, j, frames)] +
-                                          shift * (sum + s.sums[static_cast<std::size_t>(j)]) + pixels * shift * shift;
-      region.frame_hits[static_cast<std::size_t>(group.first_frame + i)] += s.hits[static_cast<std::size_t>(i)];
+                                          shift * (sum + s.sums[static_cast<std::size_t>(j)]) +
+                                          pixels * shift * shift;
+      region.frame_hits[static_cast<std::size_t>(group.first_frame + i)] +=
+          s.hits[static_cast<std::size_t>(i)];
       region.block_hits[block] += s.hits[static_cast<std::size_t>(i)];
       double* rows = region.row_sums.data() + static_cast<std::size_t>(group.first_frame + i) * height +
                      static_cast<std::size_t>(band.y - region.rect.y);
@@ -206,7 +213,8 @@ SeriesStatistics Accumulator::finish() {
   for (const Hash& hash : hashes_) {
     std::string digits;
     for (const std::uint64_t word : {hash[1], hash[0]})
-      for (int shift = 60; shift >= 0; shift -= 4) digits += kHex[(word >> static_cast<unsigned>(shift)) & 15U];
+      for (int shift = 60; shift >= 0; shift -= 4)
+        digits += kHex[(word >> static_cast<unsigned>(shift)) & 15U];
     out_.fingerprints.push_back(std::move(digits));
   }
   return std::move(out_);
@@ -245,21 +253,31 @@ Result<std::vector<double>> code_sample(const FrameStack& frames, const Geometry
   std::vector<std::byte> bytes(count * bytes_per_pixel(shape.type));
   if (const Status read = frames.read_rows(0, y, rows, bytes.data()); !read) return read.error();
   switch (shape.type) {
-    case PixelType::u8: return different_codes<std::uint8_t>(bytes);
-    case PixelType::i8: return different_codes<std::int8_t>(bytes);
-    case PixelType::u16: return different_codes<std::uint16_t>(bytes);
-    case PixelType::i16: return different_codes<std::int16_t>(bytes);
-    case PixelType::u32: return different_codes<std::uint32_t>(bytes);
-    case PixelType::i32: return different_codes<std::int32_t>(bytes);
-    case PixelType::f32: return different_codes<float>(bytes);
-    case PixelType::f64: return different_codes<double>(bytes);
+    case PixelType::u8:
+      return different_codes<std::uint8_t>(bytes);
+    case PixelType::i8:
+      return different_codes<std::int8_t>(bytes);
+    case PixelType::u16:
+      return different_codes<std::uint16_t>(bytes);
+    case PixelType::i16:
+      return different_codes<std::int16_t>(bytes);
+    case PixelType::u32:
+      return different_codes<std::uint32_t>(bytes);
+    case PixelType::i32:
+      return different_codes<std::int32_t>(bytes);
+    case PixelType::f32:
+      return different_codes<float>(bytes);
+    case PixelType::f64:
+      return different_codes<double>(bytes);
   }
   return std::vector<double>{};
 }
 
 }  // namespace
 
-Result<SeriesStatistics> accumulate(const FrameStack& frames, const Geometry& geometry, const AccumulateOptions& options) {
+Result<SeriesStatistics> accumulate(const FrameStack& frames,
+                                    const Geometry& geometry,
+                                    const AccumulateOptions& options) {
   if (frames.frames() > kMostFrames)
     return frames.error_at(kMostFrames, "found more than " + std::to_string(kMostFrames) +
                                             " frames in one series, expected fewer; split the series");
@@ -277,26 +295,30 @@ Result<SeriesStatistics> accumulate(const FrameStack& frames, const Geometry& ge
   std::map<int, std::unique_ptr<BandResult>> waiting;
   std::vector<std::unique_ptr<BandResult>> spare;
   int next = 0;
-  const Status done = for_each_item(static_cast<int>(geometry.bands.size()), options.threads, [&](int band, int worker) -> Status {
-    std::unique_ptr<BandResult> result;
-    {
-      const std::lock_guard lock(guard);
-      if (!spare.empty()) {
-        result = std::move(spare.back());
-        spare.pop_back();
-      }
-    }
-    if (!result) result = std::make_unique<BandResult>();
-    if (const Status measured = accumulator.measure(band, buffers[static_cast<std::size_t>(worker)], *result); !measured) return measured;
-    const std::lock_guard lock(guard);
-    waiting.emplace(band, std::move(result));
-    for (auto turn = waiting.find(next); turn != waiting.end(); turn = waiting.find(++next)) {
-      accumulator.add(next, *turn->second);
-      spare.push_back(std::move(turn->second));
-      waiting.erase(turn);
-    }
-    return Done{};
-  });
+  const Status done = for_each_item(
+      static_cast<int>(geometry.bands.size()), options.threads, [&](int band, int worker) -> Status {
+        std::unique_ptr<BandResult> result;
+        {
+          const std::lock_guard lock(guard);
+          if (!spare.empty()) {
+            result = std::move(spare.back());
+            spare.pop_back();
+          }
+        }
+        if (!result) result = std::make_unique<BandResult>();
+        if (const Status measured =
+                accumulator.measure(band, buffers[static_cast<std::size_t>(worker)], *result);
+            !measured)
+          return measured;
+        const std::lock_guard lock(guard);
+        waiting.emplace(band, std::move(result));
+        for (auto turn = waiting.find(next); turn != waiting.end(); turn = waiting.find(++next)) {
+          accumulator.add(next, *turn->second);
+          spare.push_back(std::move(turn->second));
+          waiting.erase(turn);
+        }
+        return Done{};
+      });
   if (!done) return done.error();
   SeriesStatistics out = accumulator.finish();
   auto codes = code_sample(frames, geometry);

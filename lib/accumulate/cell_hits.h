@@ -1,10 +1,12 @@
 #pragma once
-// Hits: which samples of a cell are set aside, and what replaces them. Part of cell_kernel_loops.h; see there.
+// Hits: which samples of a cell are set aside, and what replaces them. Part of cell_kernel_loops.h; see
+// there.
 #include "accumulate/cell_workspace.h"
 
 namespace {
 
-/// Temporal sum of squares of the cell, each frame's mean taken out; its degrees of freedom are (pixels - 1)(frames - 1).
+/// Temporal sum of squares of the cell, each frame's mean taken out; its degrees of freedom are (pixels -
+/// 1)(frames - 1).
 inline double temporal_squares(const CellInput& cell, const CellStatistics& s) {
   const double n = cell.width * cell.height;
   double own = 0;
@@ -20,8 +22,8 @@ inline double temporal_squares(const CellInput& cell, const CellStatistics& s) {
   return squares > 0 ? squares : 0;
 }
 
-/// Limit for frames x (highest deviation) - (sum of deviations), which is (frames - 1) times the distance of the highest
-/// frame from the mean of the others. Two codes more for whole numbers: coarse steps are no hits.
+/// Limit for frames x (highest deviation) - (sum of deviations), which is (frames - 1) times the distance of
+/// the highest frame from the mean of the others. Two codes more for whole numbers: coarse steps are no hits.
 inline double hit_limit(const CellInput& cell, bool whole_codes, double variance) {
   return cell.hit_threshold * std::sqrt(variance > 0 ? variance * cell.frames * (cell.frames - 1.0) : 0.0) +
          (whole_codes ? 2.0 * (cell.frames - 1.0) : 0.0);
@@ -57,8 +59,9 @@ inline double select_largest(double* values, int count, int rank) {
   return values[rank];
 }
 
-/// Temporal variance of the cell without the pixels of largest squares (which are left in work.squares), as many as may be hits: never a variance that contains
-/// what is judged by it. Leaving out the largest of clean pixels makes it smaller, by a quarter at most for two frames.
+/// Temporal variance of the cell without the pixels of largest squares (which are left in work.squares), as
+/// many as may be hits: never a variance that contains what is judged by it. Leaving out the largest of clean
+/// pixels makes it smaller, by a quarter at most for two frames.
 template <class C>
 double trimmed_variance(const CellInput& cell, Workspace<C>& work, const CellStatistics& s) {
   const int pixels = cell.width * cell.height;
@@ -85,7 +88,8 @@ double trimmed_variance(const CellInput& cell, Workspace<C>& work, const CellSta
   select_largest(ordered, pixels, left_out);
   double part[8] = {0, 0, 0, 0, 0, 0, 0, 0};  // in a fixed order; one running sum would wait for itself
   for (int p = left_out; p < pixels; ++p) part[p & 7] += ordered[p];
-  const double kept = ((part[0] + part[1]) + (part[2] + part[3])) + ((part[4] + part[5]) + (part[6] + part[7]));
+  const double kept =
+      ((part[0] + part[1]) + (part[2] + part[3])) + ((part[4] + part[5]) + (part[6] + part[7]));
   return kept / ((pixels - left_out) * (cell.frames - 1.0));
 }
 
@@ -93,7 +97,7 @@ double trimmed_variance(const CellInput& cell, Workspace<C>& work, const CellSta
 struct PixelSeries {
   double deviation[kGroupFrames];
   int highest = 0;
-  double others_mean = 0;   ///< of all frames but the highest
+  double others_mean = 0;  ///< of all frames but the highest
   double others_range = 0;
 };
 
@@ -123,9 +127,10 @@ PixelSeries pixel_series(const CellInput& cell, const Workspace<C>& work, const 
   return out;
 }
 
-/// Replaces hits; returns how many. A hit is a pixel whose highest frame stands above the mean of its other frames by more
-/// than the threshold, while those others agree among themselves: a pixel that blinks, or a hot one with noise of its
-/// own, is not a hit. Hits shift the frame means that all is judged by, so the caller asks again until there are none.
+/// Replaces hits; returns how many. A hit is a pixel whose highest frame stands above the mean of its other
+/// frames by more than the threshold, while those others agree among themselves: a pixel that blinks, or a
+/// hot one with noise of its own, is not a hit. Hits shift the frame means that all is judged by, so the
+/// caller asks again until there are none.
 template <class C>
 int replace_hits(const CellInput& cell, bool whole_codes, Workspace<C>& work, CellStatistics& out) {
   const int pixels = cell.width * cell.height;
@@ -133,7 +138,8 @@ int replace_hits(const CellInput& cell, bool whole_codes, Workspace<C>& work, Ce
   const int most = most_hits(pixels);
   if (pixels <= 2 * most) return 0;
   const double limit = hit_limit(cell, whole_codes, trimmed_variance(cell, work, out));
-  // A frame at the distance d from the mean of the others adds d^2 (frames - 1) / frames to the squares of its pixel.
+  // A frame at the distance d from the mean of the others adds d^2 (frames - 1) / frames to the squares of
+  // its pixel.
   const double least_squares = 0.999 * limit * limit / (frames * (frames - 1));
   int found = 0;
   int hit_pixel[kCellPixels / 32 + 4];
@@ -167,7 +173,8 @@ int replace_hits(const CellInput& cell, bool whole_codes, Workspace<C>& work, Ce
     for (int f = 0; f < cell.frames; ++f)
       if (f != hit_frame[i]) others += value_of(f, hit_pixel[i]) - clean_sum[f] / clean_pixels[f];
     const double value = others / (cell.frames - 1) + clean_sum[hit_frame[i]] / clean_pixels[hit_frame[i]];
-    auto& stored = work.centred[static_cast<std::size_t>(hit_frame[i])][static_cast<std::size_t>(hit_pixel[i])];
+    auto& stored =
+        work.centred[static_cast<std::size_t>(hit_frame[i])][static_cast<std::size_t>(hit_pixel[i])];
     if constexpr (std::is_same_v<C, std::int16_t>) {
       const double whole = std::floor(value + 0.5);
       stored = static_cast<std::int16_t>(whole < -32768 ? -32768 : whole > 32767 ? 32767 : whole);

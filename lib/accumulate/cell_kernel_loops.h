@@ -1,8 +1,8 @@
 #pragma once
-// The loops behind cell_kernel.h. Included by one translation unit per instruction set, each compiled with its own
-// flags, after the header with that set's loops over whole numbers. All of it has internal linkage and it calls no
-// templates of the standard library that might be emitted on their own, so that no linker can mix code of one set into
-// another.
+// The loops behind cell_kernel.h. Included by one translation unit per instruction set, each compiled with
+// its own flags, after the header with that set's loops over whole numbers. All of it has internal linkage
+// and it calls no templates of the standard library that might be emitted on their own, so that no linker can
+// mix code of one set into another.
 #include "accumulate/cell_hits.h"
 #include "accumulate/cell_workspace.h"
 
@@ -21,8 +21,8 @@ int frame_not_finite(const CellInput& cell) {
   return -1;
 }
 
-/// Whether the cell holds whole numbers, also where their type is a floating-point one: the same frames in another container
-/// are then treated alike.
+/// Whether the cell holds whole numbers, also where their type is a floating-point one: the same frames in
+/// another container are then treated alike.
 template <class T>
 bool holds_whole_codes(const CellInput& cell) {
   if constexpr (std::is_floating_point_v<T>) {
@@ -60,8 +60,9 @@ double centre_of(Range<T> range) {
   if constexpr (kWhole<T>)
     return static_cast<double>((static_cast<int>(range.low) + static_cast<int>(range.high) + 1) >> 1);
   else
-    return std::is_integral_v<T> ? std::floor(0.5 * (static_cast<double>(range.low) + static_cast<double>(range.high)))
-                                 : static_cast<double>(range.low);
+    return std::is_integral_v<T>
+               ? std::floor(0.5 * (static_cast<double>(range.low) + static_cast<double>(range.high)))
+               : static_cast<double>(range.low);
 }
 
 template <class C>
@@ -87,14 +88,16 @@ std::int64_t count_of(const CellInput& cell, double code, double centre, const W
     std::int64_t total = 0;
     for (int f = 0; f < cell.frames; ++f)
       for (int p = 0; p < pixels; ++p)
-        total += work.centred[static_cast<std::size_t>(f)][static_cast<std::size_t>(p)] == code - centre ? 1 : 0;
+        total +=
+            work.centred[static_cast<std::size_t>(f)][static_cast<std::size_t>(p)] == code - centre ? 1 : 0;
     return total;
   }
 }
 
 /// An extreme that some other cell of the block is known to exceed is not worth counting.
 template <class C>
-void find_extremes(const CellInput& cell, double low, double high, const Workspace<C>& work, CellStatistics& out) {
+void find_extremes(
+    const CellInput& cell, double low, double high, const Workspace<C>& work, CellStatistics& out) {
   out.lowest = {low, 0};
   out.highest = {high, 0};
   if (!(low > cell.known_lowest)) out.lowest.count = count_of(cell, low, out.centre, work);
@@ -142,12 +145,14 @@ void sums_and_gram(const CellInput& cell, double magnitude, const Workspace<C>& 
   } else {
     for (int i = 0; i < cell.frames; ++i)
       for (int j = i; j < cell.frames; ++j)
-        out.gram[pair_index(i, j, cell.frames)] = real_dot(work.centred[static_cast<std::size_t>(i)].data(),
-                                                           work.centred[static_cast<std::size_t>(j)].data(), pixels);
+        out.gram[pair_index(i, j, cell.frames)] =
+            real_dot(work.centred[static_cast<std::size_t>(i)].data(),
+                     work.centred[static_cast<std::size_t>(j)].data(), pixels);
   }
 }
 
-/// No pixel stands out by more than the result, which is the largest range of any pixel over the frames of the group.
+/// No pixel stands out by more than the result, which is the largest range of any pixel over the frames of
+/// the group.
 template <class C>
 double deviation_range(const CellInput& cell, const Workspace<C>& work, const CellStatistics& s) {
   const int pixels = cell.width * cell.height;
@@ -175,10 +180,15 @@ double deviation_range(const CellInput& cell, const Workspace<C>& work, const Ce
 
 /// Sets hits aside. Nearly all cells end at one of the first two questions.
 template <class C>
-void set_hits_aside(const CellInput& cell, bool whole_codes, double spread, double magnitude, Workspace<C>& work, CellStatistics& out) {
+void set_hits_aside(const CellInput& cell,
+                    bool whole_codes,
+                    double spread,
+                    double magnitude,
+                    Workspace<C>& work,
+                    CellStatistics& out) {
   const int pixels = cell.width * cell.height;
-  // The variance that remains when as many pixels as may be hits owe the most that this range allows to the squares; the
-  // largest of clean pixels are trimmed too, which takes a quarter at most.
+  // The variance that remains when as many pixels as may be hits owe the most that this range allows to the
+  // squares; the largest of clean pixels are trimmed too, which takes a quarter at most.
   const auto least_limit = [&](double range) {
     const double most = most_hits(pixels) * range * range * (cell.frames - 1) / cell.frames;
     const double least = 0.7 * (temporal_squares(cell, out) - most) / (pixels * (cell.frames - 1.0));
@@ -195,7 +205,11 @@ void set_hits_aside(const CellInput& cell, bool whole_codes, double spread, doub
 }
 
 template <class T>
-void add_to_totals(const CellInput& cell, double centre, double magnitude, const Workspace<Centred<T>>& work, CellTotals& totals) {
+void add_to_totals(const CellInput& cell,
+                   double centre,
+                   double magnitude,
+                   const Workspace<Centred<T>>& work,
+                   CellTotals& totals) {
   const int pixels = cell.width * cell.height;
   if (cell.first_group) {
     totals.centre = centre;
@@ -204,7 +218,8 @@ void add_to_totals(const CellInput& cell, double centre, double magnitude, const
   const double shift = cell.frames * (centre - totals.centre);
   totals.magnitude += cell.frames * magnitude + std::fabs(shift);
   if constexpr (kWhole<T>) {
-    whole_add(work, cell.frames, pixels, magnitude, cell.first_group, static_cast<int>(shift), totals.whole.data());
+    whole_add(work, cell.frames, pixels, magnitude, cell.first_group, static_cast<int>(shift),
+              totals.whole.data());
   } else {
     for (int f = 0; f < cell.frames; ++f) {
       const double* d = work.centred[static_cast<std::size_t>(f)].data();
@@ -255,25 +270,29 @@ void square_totals(const CellTotals& totals, int width, int height, CellSquares&
       for (int x = 0; x < width; ++x) columns[static_cast<std::size_t>(x)] += row[x];
     }
     for (int x = 0; x < width; ++x) {
-      out.column_sums[static_cast<std::size_t>(x)] = static_cast<double>(columns[static_cast<std::size_t>(x)]);
+      out.column_sums[static_cast<std::size_t>(x)] =
+          static_cast<double>(columns[static_cast<std::size_t>(x)]);
       out.sum += static_cast<double>(columns[static_cast<std::size_t>(x)]);
     }
     if (totals.magnitude < kSquaresInWholes) {
       out.square = static_cast<double>(whole_square(totals.whole.data(), width * height));
     } else {
       for (int p = 0; p < width * height; ++p)
-        out.square += static_cast<double>(totals.whole[static_cast<std::size_t>(p)]) * totals.whole[static_cast<std::size_t>(p)];
+        out.square += static_cast<double>(totals.whole[static_cast<std::size_t>(p)]) *
+                      totals.whole[static_cast<std::size_t>(p)];
     }
   } else {
     out.column_sums.fill(0);
     for (int y = 0; y < height; ++y)
-      for (int x = 0; x < width; ++x) out.column_sums[static_cast<std::size_t>(x)] += totals.real[static_cast<std::size_t>(y * width + x)];
+      for (int x = 0; x < width; ++x)
+        out.column_sums[static_cast<std::size_t>(x)] += totals.real[static_cast<std::size_t>(y * width + x)];
     for (int x = 0; x < width; ++x) out.sum += out.column_sums[static_cast<std::size_t>(x)];
     out.square = real_dot(totals.real.data(), totals.real.data(), width * height);
   }
 }
 
-/// The place of the row is mixed in after the row's own hash: a seeded hash would make a secret of its own for each row.
+/// The place of the row is mixed in after the row's own hash: a seeded hash would make a secret of its own
+/// for each row.
 inline std::array<std::uint64_t, 2> hash_row(const void* row, std::size_t bytes, std::uint64_t number) {
   const XXH128_hash_t plain = XXH3_128bits(row, bytes);
   const std::uint64_t placed[3] = {plain.low64, plain.high64, number};
@@ -286,14 +305,22 @@ constexpr CellKernels kKernels{measure_cell<T>, square_totals<T>, hash_row};
 
 inline CellKernels kernels_for(PixelType type) {
   switch (type) {
-    case PixelType::u8: return kKernels<std::uint8_t>;
-    case PixelType::i8: return kKernels<std::int8_t>;
-    case PixelType::u16: return kKernels<std::uint16_t>;
-    case PixelType::i16: return kKernels<std::int16_t>;
-    case PixelType::u32: return kKernels<std::uint32_t>;
-    case PixelType::i32: return kKernels<std::int32_t>;
-    case PixelType::f32: return kKernels<float>;
-    case PixelType::f64: return kKernels<double>;
+    case PixelType::u8:
+      return kKernels<std::uint8_t>;
+    case PixelType::i8:
+      return kKernels<std::int8_t>;
+    case PixelType::u16:
+      return kKernels<std::uint16_t>;
+    case PixelType::i16:
+      return kKernels<std::int16_t>;
+    case PixelType::u32:
+      return kKernels<std::uint32_t>;
+    case PixelType::i32:
+      return kKernels<std::int32_t>;
+    case PixelType::f32:
+      return kKernels<float>;
+    case PixelType::f64:
+      return kKernels<double>;
   }
   return kKernels<double>;
 }

@@ -1,6 +1,6 @@
 #pragma once
-// Loops over integers of up to 16 bits, sixteen at a time. Part of cell_kernel_loops.h; see there. The same functions as in
-// cell_whole_portable.h, where they are described.
+// Loops over integers of up to 16 bits, sixteen at a time. Part of cell_kernel_loops.h; see there. The same
+// functions as in cell_whole_portable.h, where they are described.
 #include <immintrin.h>
 
 #include "accumulate/cell_workspace.h"
@@ -78,14 +78,18 @@ inline void whole_centre(int frames, int pixels, int centre, Workspace<std::int1
   }
 }
 
-inline std::int64_t whole_count(const Workspace<std::int16_t>& work, int frames, int pixels, std::int16_t code) {
+inline std::int64_t whole_count(const Workspace<std::int16_t>& work,
+                                int frames,
+                                int pixels,
+                                std::int16_t code) {
   const __m256i codes = _mm256_set1_epi16(code);
   const int vectors = pixels / kLane * kLane;
   std::int64_t total = 0;
   for (int f = 0; f < frames; ++f) {
     const std::int16_t* d = work.centred[static_cast<std::size_t>(f)].data();
     __m256i count = _mm256_setzero_si256();  // a lane counts at most 128
-    for (int p = 0; p < vectors; p += kLane) count = _mm256_sub_epi16(count, _mm256_cmpeq_epi16(load(d + p), codes));
+    for (int p = 0; p < vectors; p += kLane)
+      count = _mm256_sub_epi16(count, _mm256_cmpeq_epi16(load(d + p), codes));
     total += sum_of_32(_mm256_madd_epi16(count, _mm256_set1_epi16(1)));
     for (int p = vectors; p < pixels; ++p) total += d[p] == code ? 1 : 0;
   }
@@ -99,16 +103,23 @@ inline std::int32_t whole_sum(const std::int16_t* row, int width) {
     const __m256i ones = _mm256_set1_epi16(1);
     __m256i sum = _mm256_setzero_si256();
     for (int x = 0; x < vectors; x += kLane)
-      sum = _mm256_add_epi32(sum, _mm256_madd_epi16(_mm256_loadu_si256(reinterpret_cast<const __m256i*>(row + x)), ones));
+      sum = _mm256_add_epi32(
+          sum, _mm256_madd_epi16(_mm256_loadu_si256(reinterpret_cast<const __m256i*>(row + x)), ones));
     total = static_cast<std::int32_t>(sum_of_32(sum));
   }
   for (int x = vectors; x < width; ++x) total += row[x];
   return total;
 }
 
-/// Frames [i, i + kRows) against frames [j, j + kColumns): each product of a block of pairs has a register of its own.
+/// Frames [i, i + kRows) against frames [j, j + kColumns): each product of a block of pairs has a register of
+/// its own.
 template <int kRows, int kColumns>
-void gram_block(const Workspace<std::int16_t>& work, int i, int j, int pixels, int run, std::int64_t (&out)[kRows][kColumns]) {
+void gram_block(const Workspace<std::int16_t>& work,
+                int i,
+                int j,
+                int pixels,
+                int run,
+                std::int64_t (&out)[kRows][kColumns]) {
   for (auto& row : out)
     for (std::int64_t& value : row) value = 0;
   for (int begin = 0; begin < pixels; begin += run) {
@@ -118,10 +129,12 @@ void gram_block(const Workspace<std::int16_t>& work, int i, int j, int pixels, i
       for (__m256i& value : row) value = _mm256_setzero_si256();
     for (int p = begin; p < end; p += kLane) {
       __m256i b[kColumns];
-      for (int c = 0; c < kColumns; ++c) b[c] = load(work.centred[static_cast<std::size_t>(j + c)].data() + p);
+      for (int c = 0; c < kColumns; ++c)
+        b[c] = load(work.centred[static_cast<std::size_t>(j + c)].data() + p);
       for (int r = 0; r < kRows; ++r) {
         const __m256i a = load(work.centred[static_cast<std::size_t>(i + r)].data() + p);
-        for (int c = 0; c < kColumns; ++c) sum[r][c] = _mm256_add_epi32(sum[r][c], _mm256_madd_epi16(a, b[c]));
+        for (int c = 0; c < kColumns; ++c)
+          sum[r][c] = _mm256_add_epi32(sum[r][c], _mm256_madd_epi16(a, b[c]));
       }
     }
     for (int r = 0; r < kRows; ++r)
@@ -129,7 +142,8 @@ void gram_block(const Workspace<std::int16_t>& work, int i, int j, int pixels, i
   }
 }
 
-inline void whole_gram(const Workspace<std::int16_t>& work, int frames, int pixels, double magnitude, std::int64_t* gram) {
+inline void whole_gram(
+    const Workspace<std::int16_t>& work, int frames, int pixels, double magnitude, std::int64_t* gram) {
   // A lane of 32 bits takes two products a vector; magnitudes of 32768 would not fit even once.
   const int vectors = products_in_32_bits(magnitude) / 2;
   if (vectors < 1) {
@@ -143,7 +157,9 @@ inline void whole_gram(const Workspace<std::int16_t>& work, int frames, int pixe
       }
     return;
   }
-  const int run = (vectors < static_cast<int>(kCellPixels) / kLane ? vectors : static_cast<int>(kCellPixels) / kLane) * kLane;
+  const int run =
+      (vectors < static_cast<int>(kCellPixels) / kLane ? vectors : static_cast<int>(kCellPixels) / kLane) *
+      kLane;
   int i = 0;
   for (; i + 2 <= frames; i += 2) {
     int j = i;
@@ -169,7 +185,10 @@ inline void whole_gram(const Workspace<std::int16_t>& work, int frames, int pixe
     }
 }
 
-inline int whole_deviation_range(const Workspace<std::int16_t>& work, int frames, int pixels, const int* mean) {
+inline int whole_deviation_range(const Workspace<std::int16_t>& work,
+                                 int frames,
+                                 int pixels,
+                                 const int* mean) {
   const int vectors = pixels / kLane * kLane;
   __m256i means[kGroupFrames];
   for (int f = 0; f < frames; ++f) means[f] = _mm256_set1_epi16(static_cast<std::int16_t>(mean[f]));
@@ -179,7 +198,8 @@ inline int whole_deviation_range(const Workspace<std::int16_t>& work, int frames
     __m256i low = _mm256_subs_epi16(load(work.centred[0].data() + p), means[0]);
     __m256i high = low;
     for (int f = 1; f < frames; ++f) {
-      const __m256i e = _mm256_subs_epi16(load(work.centred[static_cast<std::size_t>(f)].data() + p), means[f]);
+      const __m256i e =
+          _mm256_subs_epi16(load(work.centred[static_cast<std::size_t>(f)].data() + p), means[f]);
       low = _mm256_min_epi16(low, e);
       high = _mm256_max_epi16(high, e);
     }
@@ -202,7 +222,13 @@ inline int whole_deviation_range(const Workspace<std::int16_t>& work, int frames
   return out;
 }
 
-inline void whole_add(const Workspace<std::int16_t>& work, int frames, int pixels, double magnitude, bool begin, int shift, std::int32_t* total) {
+inline void whole_add(const Workspace<std::int16_t>& work,
+                      int frames,
+                      int pixels,
+                      double magnitude,
+                      bool begin,
+                      int shift,
+                      std::int32_t* total) {
   const int vectors = pixels / kLane * kLane;
   const __m256i shifts = _mm256_set1_epi32(shift);
   const bool narrow = magnitude * frames <= 32767;  // the sum over frames fits 16 bits
@@ -211,7 +237,8 @@ inline void whole_add(const Workspace<std::int16_t>& work, int frames, int pixel
     __m256i high = shifts;
     if (narrow) {
       __m256i sum = load(work.centred[0].data() + p);
-      for (int f = 1; f < frames; ++f) sum = _mm256_add_epi16(sum, load(work.centred[static_cast<std::size_t>(f)].data() + p));
+      for (int f = 1; f < frames; ++f)
+        sum = _mm256_add_epi16(sum, load(work.centred[static_cast<std::size_t>(f)].data() + p));
       low = _mm256_add_epi32(low, _mm256_cvtepi16_epi32(_mm256_castsi256_si128(sum)));
       high = _mm256_add_epi32(high, _mm256_cvtepi16_epi32(_mm256_extracti128_si256(sum, 1)));
     } else {
@@ -231,7 +258,8 @@ inline void whole_add(const Workspace<std::int16_t>& work, int frames, int pixel
   }
   for (int p = vectors; p < pixels; ++p) {
     std::int32_t sum = begin ? shift : total[p] + shift;
-    for (int f = 0; f < frames; ++f) sum += work.centred[static_cast<std::size_t>(f)][static_cast<std::size_t>(p)];
+    for (int f = 0; f < frames; ++f)
+      sum += work.centred[static_cast<std::size_t>(f)][static_cast<std::size_t>(p)];
     total[p] = sum;
   }
 }

@@ -1,12 +1,12 @@
 #pragma once
-// Loops over integers of up to 16 bits, for every machine. Part of cell_kernel_loops.h; see there. cell_whole_avx2.h holds
-// the same functions for machines that have AVX2; both give the same bits.
+// Loops over integers of up to 16 bits, for every machine. Part of cell_kernel_loops.h; see there.
+// cell_whole_avx2.h holds the same functions for machines that have AVX2; both give the same bits.
 #include "accumulate/cell_workspace.h"
 
 namespace {
 
-/// Lowest and highest pixel; on the way the pixels' bits go into `work`, row by row without gaps, where all that follows is
-/// close together.
+/// Lowest and highest pixel; on the way the pixels' bits go into `work`, row by row without gaps, where all
+/// that follows is close together.
 template <class T>
 Range<T> whole_gather(const CellInput& cell, Workspace<std::int16_t>& work) {
   Range<T> range{*row_of<T>(cell, 0, 0), *row_of<T>(cell, 0, 0)};
@@ -32,13 +32,17 @@ inline void whole_centre(int frames, int pixels, int centre, Workspace<std::int1
   const auto shift = static_cast<std::uint16_t>(centre);
   for (int f = 0; f < frames; ++f) {
     std::int16_t* d = work.centred[static_cast<std::size_t>(f)].data();
-    for (int p = 0; p < pixels; ++p) d[p] = static_cast<std::int16_t>(static_cast<std::uint16_t>(static_cast<std::uint16_t>(d[p]) - shift));
+    for (int p = 0; p < pixels; ++p)
+      d[p] = static_cast<std::int16_t>(static_cast<std::uint16_t>(static_cast<std::uint16_t>(d[p]) - shift));
     for (int p = pixels; p < padded(pixels); ++p) d[p] = 0;
   }
 }
 
 /// How many centred pixels are `code`.
-inline std::int64_t whole_count(const Workspace<std::int16_t>& work, int frames, int pixels, std::int16_t code) {
+inline std::int64_t whole_count(const Workspace<std::int16_t>& work,
+                                int frames,
+                                int pixels,
+                                std::int16_t code) {
   std::int64_t total = 0;
   for (int f = 0; f < frames; ++f) {
     const std::int16_t* d = work.centred[static_cast<std::size_t>(f)].data();
@@ -56,8 +60,10 @@ inline std::int32_t whole_sum(const std::int16_t* row, int width) {
   return total;
 }
 
-/// Products of all pairs of frames, summed over `pixels` (padded); 32 bit sums run while they cannot overflow.
-inline void whole_gram(const Workspace<std::int16_t>& work, int frames, int pixels, double magnitude, std::int64_t* gram) {
+/// Products of all pairs of frames, summed over `pixels` (padded); 32 bit sums run while they cannot
+/// overflow.
+inline void whole_gram(
+    const Workspace<std::int16_t>& work, int frames, int pixels, double magnitude, std::int64_t* gram) {
   const int chunk = products_in_32_bits(magnitude);
   for (int i = 0; i < frames; ++i)
     for (int j = i; j < frames; ++j) {
@@ -67,15 +73,20 @@ inline void whole_gram(const Workspace<std::int16_t>& work, int frames, int pixe
       for (int begin = 0; begin < pixels; begin += chunk) {
         const int end = begin + chunk < pixels ? begin + chunk : pixels;
         std::int32_t part = 0;
-        for (int p = begin; p < end; ++p) part += static_cast<std::int32_t>(a[p]) * static_cast<std::int32_t>(b[p]);
+        for (int p = begin; p < end; ++p)
+          part += static_cast<std::int32_t>(a[p]) * static_cast<std::int32_t>(b[p]);
         total += part;
       }
       gram[pair_index(i, j, frames)] = total;
     }
 }
 
-/// Largest range over frames of any pixel's deviation from `mean` of its frame; no less than 32767 where that is exceeded.
-inline int whole_deviation_range(const Workspace<std::int16_t>& work, int frames, int pixels, const int* mean) {
+/// Largest range over frames of any pixel's deviation from `mean` of its frame; no less than 32767 where that
+/// is exceeded.
+inline int whole_deviation_range(const Workspace<std::int16_t>& work,
+                                 int frames,
+                                 int pixels,
+                                 const int* mean) {
   int widest = 0;
   for (int p = 0; p < pixels; ++p) {
     int low = work.centred[0][static_cast<std::size_t>(p)] - mean[0];
@@ -91,7 +102,13 @@ inline int whole_deviation_range(const Workspace<std::int16_t>& work, int frames
 }
 
 /// total = or += sum over frames of the centred pixels + shift.
-inline void whole_add(const Workspace<std::int16_t>& work, int frames, int pixels, double, bool begin, int shift, std::int32_t* total) {
+inline void whole_add(const Workspace<std::int16_t>& work,
+                      int frames,
+                      int pixels,
+                      double,
+                      bool begin,
+                      int shift,
+                      std::int32_t* total) {
   for (int f = 0; f < frames; ++f) {
     const std::int16_t* d = work.centred[static_cast<std::size_t>(f)].data();
     if (f == 0 && begin)

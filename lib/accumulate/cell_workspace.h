@@ -9,7 +9,8 @@ namespace {
 
 using namespace evenfield;
 
-/// Integer pixels of up to 16 bits are centred into 16 bits: the middle of the cell's range as centre always fits.
+/// Integer pixels of up to 16 bits are centred into 16 bits: the middle of the cell's range as centre always
+/// fits.
 template <class T>
 constexpr bool kWhole = std::is_integral_v<T> && sizeof(T) <= 2;
 template <class T>

@@ -25,7 +25,8 @@ BlockGrid block_grid(const Rect& rect) {
   const auto smallest = [&] { return (rect.width / grid.columns) * (rect.height / grid.rows); };
   while (smallest() < kBlockPixels && grid.columns * grid.rows > 1) {
     // The narrower side grows first, so that blocks tend to squares.
-    const bool widen = grid.rows == 1 || (grid.columns > 1 && rect.width / grid.columns <= rect.height / grid.rows);
+    const bool widen =
+        grid.rows == 1 || (grid.columns > 1 && rect.width / grid.columns <= rect.height / grid.rows);
     --(widen ? grid.columns : grid.rows);
   }
   return grid;
@@ -49,7 +50,8 @@ Geometry make_geometry(const FrameShape& shape, const std::vector<Rect>& regions
         for (const int region : members) {
           const BlockGrid& grid = geometry.grids[static_cast<std::size_t>(region)];
           for (int column = 0; column < grid.columns; ++column) {
-            const std::vector<int> x = cuts(grid.column_begin(column), grid.column_begin(column + 1), kCellColumns);
+            const std::vector<int> x =
+                cuts(grid.column_begin(column), grid.column_begin(column + 1), kCellColumns);
             for (std::size_t m = 0; m + 1 < x.size(); ++m)
               band.cells.push_back({region, block_row * grid.columns + column, x[m], x[m + 1] - x[m]});
           }

@@ -1,10 +1,11 @@
 #pragma once
-/// How a frame is cut for accumulation. Part of the definition of the results: it depends on the frame and its
-/// regions alone, never on threads or caches.
+/// How a frame is cut for accumulation. Part of the definition of the results: it depends on the frame and
+/// its regions alone, never on threads or caches.
 ///
-/// A region has 16 x 16 blocks, or fewer where a block would have under 64 pixels, nearly equal in size. A block is
-/// cut into cells, nearly equal, at most 128 columns wide and 16 rows high, so that blocks are always whole unions of
-/// cells. A band is a row of cells: all cells that lie in the same rows, of every region that is cut alike there.
+/// A region has 16 x 16 blocks, or fewer where a block would have under 64 pixels, nearly equal in size. A
+/// block is cut into cells, nearly equal, at most 128 columns wide and 16 rows high, so that blocks are
+/// always whole unions of cells. A band is a row of cells: all cells that lie in the same rows, of every
+/// region that is cut alike there.
 
 #include <vector>
 
@@ -29,7 +30,8 @@ struct Band {
   int height = 0;
   std::vector<Cell> cells;   ///< by region, from left to right
   std::vector<int> regions;  ///< the regions that have cells here
-  std::vector<bool> hashed;  ///< [row of the band] this band gives the row to the fingerprint; no row is given twice
+  std::vector<bool>
+      hashed;  ///< [row of the band] this band gives the row to the fingerprint; no row is given twice
 };
 
 struct BlockGrid {

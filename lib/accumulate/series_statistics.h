@@ -1,11 +1,12 @@
 #pragma once
-/// Everything that the analysis needs to know of one series of frames, in sums. The value that `accumulate` makes.
+/// Everything that the analysis needs to know of one series of frames, in sums. The value that `accumulate`
+/// makes.
 ///
-/// A region is divided into blocks (columns x rows of them, row by row). Frames are taken in balanced groups of at most
-/// eight. All sums of a block are of pixel - centre, with one constant centre per block; sums of integer pixels of up to
-/// 16 bits are exact integers as long as they stay below 2^53. A pixel that was set aside as a hit is replaced, in
-/// the frame that was hit, by the mean of that pixel in the other frames of its group, before anything is summed; each
-/// costs one degree of freedom of the temporal variance.
+/// A region is divided into blocks (columns x rows of them, row by row). Frames are taken in balanced groups
+/// of at most eight. All sums of a block are of pixel - centre, with one constant centre per block; sums of
+/// integer pixels of up to 16 bits are exact integers as long as they stay below 2^53. A pixel that was set
+/// aside as a hit is replaced, in the frame that was hit, by the mean of that pixel in the other frames of
+/// its group, before anything is summed; each costs one degree of freedom of the temporal variance.
 
 #include <array>
 #include <cstddef>
@@ -41,17 +42,17 @@ struct Extreme {
 
 struct RegionStatistics {
   Rect rect;
-  int columns = 0;  ///< blocks side by side
-  int rows = 0;     ///< blocks one below the other
-  std::vector<double> centre;              ///< [block] DN
-  std::vector<std::int64_t> pixels;        ///< [block]
+  int columns = 0;                   ///< blocks side by side
+  int rows = 0;                      ///< blocks one below the other
+  std::vector<double> centre;        ///< [block] DN
+  std::vector<std::int64_t> pixels;  ///< [block]
   std::vector<GroupStatistics> groups;
-  std::vector<double> total_square;        ///< [block] sum over pixels of (sum over all frames of (y - centre))^2
-  std::vector<Extreme> lowest, highest;    ///< [block] over all frames, hits included
-  std::vector<std::int64_t> block_hits;    ///< [block] samples set aside
-  std::vector<std::int64_t> frame_hits;    ///< [frame] samples set aside
-  std::vector<double> row_sums;            ///< [frame][row of the region] sum over columns of y, DN
-  std::vector<double> column_sums;         ///< [column of the region] sum over rows and frames of y, DN
+  std::vector<double> total_square;  ///< [block] sum over pixels of (sum over all frames of (y - centre))^2
+  std::vector<Extreme> lowest, highest;  ///< [block] over all frames, hits included
+  std::vector<std::int64_t> block_hits;  ///< [block] samples set aside
+  std::vector<std::int64_t> frame_hits;  ///< [frame] samples set aside
+  std::vector<double> row_sums;          ///< [frame][row of the region] sum over columns of y, DN
+  std::vector<double> column_sums;       ///< [column of the region] sum over rows and frames of y, DN
 
   std::size_t blocks() const { return centre.size(); }
 };
@@ -63,7 +64,8 @@ struct SeriesStatistics {
   /// [frame] XXH3-128 of the decoded pixels of every row that a region touches, as 32 hexadecimal digits; it
   /// depends neither on the container nor on how the regions lie within those rows.
   std::vector<std::string> fingerprints;
-  std::vector<double> code_sample;  ///< ascending, each once: codes that occur in some rows of the first frame
+  std::vector<double>
+      code_sample;  ///< ascending, each once: codes that occur in some rows of the first frame
 };
 
 }  // namespace evenfield

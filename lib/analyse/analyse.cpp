@@ -28,7 +28,8 @@ SeriesResult series_result(const RegionLevels& levels, std::size_t series) {
   if (summary.variance) out.variance_uncertainty_dn2 = *summary.variance * std::sqrt(2 / summary.dof);
   out.saturated_fraction = levels.saturated_share(summary);
   if (summary.scaled && summary.frame_mean_variance) {
-    const auto level = std::find_if(levels.levels().begin(), levels.levels().end(), [&](const Level& l) { return l.series == series; });
+    const auto level = std::find_if(levels.levels().begin(), levels.levels().end(),
+                                    [&](const Level& l) { return l.series == series; });
     if (level != levels.levels().end())
       out.flicker_percent = 100 * std::sqrt(std::max(0.0, *summary.frame_mean_variance)) / level->signal;
   }
@@ -37,7 +38,11 @@ SeriesResult series_result(const RegionLevels& levels, std::size_t series) {
   return out;
 }
 
-RegionCurves region_curves(const RegionLevels& levels, const GainAndNoise& gain, const Response& response, const DarkCurrent& dark, const std::vector<int>& rows) {
+RegionCurves region_curves(const RegionLevels& levels,
+                           const GainAndNoise& gain,
+                           const Response& response,
+                           const DarkCurrent& dark,
+                           const std::vector<int>& rows) {
   RegionCurves out;
   out.region = levels.input().regions[levels.region()].name;
   out.saturates = levels.top().saturates;
@@ -54,7 +59,9 @@ RegionCurves region_curves(const RegionLevels& levels, const GainAndNoise& gain,
       point.x = level.signal;
       point.y = *level.variance - *level.dark_variance;
       point.y_uncertainty = *level.variance * std::sqrt(2 / flat.dof);
-      if (gain.gain) point.fitted = gain.gain->value * level.signal + (gain.line_intercept_dn2 > 0 ? gain.line_intercept_dn2 - reference : 0.0);
+      if (gain.gain)
+        point.fitted = gain.gain->value * level.signal +
+                       (gain.line_intercept_dn2 > 0 ? gain.line_intercept_dn2 - reference : 0.0);
       point.used = std::find(gain.gain_levels.begin(), gain.gain_levels.end(), i) != gain.gain_levels.end();
       out.photon_transfer.push_back(point);
     }
@@ -68,7 +75,8 @@ RegionCurves region_curves(const RegionLevels& levels, const GainAndNoise& gain,
       out.response.push_back(point);
     }
   }
-  std::sort(out.response.begin(), out.response.end(), [](const CurvePoint& a, const CurvePoint& b) { return a.x < b.x; });
+  std::sort(out.response.begin(), out.response.end(),
+            [](const CurvePoint& a, const CurvePoint& b) { return a.x < b.x; });
   for (std::size_t s = 0; s < levels.input().series.size(); ++s) {
     const RegionSummary& summary = levels.summary(s);
     const Conditions& conditions = levels.input().series[s].conditions;
@@ -89,12 +97,14 @@ RegionCurves region_curves(const RegionLevels& levels, const GainAndNoise& gain,
       mean.relative = summary.scales[f];
       mean.deviation_dn = summary.frame_means[f] - summary.mean;
       const bool relative = conditions.kind == SeriesKind::flat && summary.scaled;
-      const auto level = std::find_if(levels.levels().begin(), levels.levels().end(), [&](const Level& l) { return l.series == s; });
+      const auto level = std::find_if(levels.levels().begin(), levels.levels().end(),
+                                      [&](const Level& l) { return l.series == s; });
       mean.deviation_uncertainty = relative && level != levels.levels().end() ? noise / level->signal : noise;
       out.frame_means.push_back(mean);
     }
   }
-  std::sort(out.dark_mean.begin(), out.dark_mean.end(), [](const CurvePoint& a, const CurvePoint& b) { return a.x < b.x; });
+  std::sort(out.dark_mean.begin(), out.dark_mean.end(),
+            [](const CurvePoint& a, const CurvePoint& b) { return a.x < b.x; });
   return out;
 }
 
@@ -129,12 +139,15 @@ Characterization analyse(const AnalysisInput& input) {
       rows.push_back(static_cast<int>(s * regions + r));
       table[r].push_back(series_result(levels, s));
     }
-    for (const std::size_t i : gain.gain_levels) table[r][levels.levels()[i].series].used_in.emplace_back("gain");
+    for (const std::size_t i : gain.gain_levels)
+      table[r][levels.levels()[i].series].used_in.emplace_back("gain");
     for (const Level& level : levels.levels())
       if (axis_of(levels, level)) table[r][level.series].used_in.emplace_back("response");
-    for (const std::size_t i : response.levels) table[r][levels.levels()[i].series].used_in.emplace_back("linearity");
+    for (const std::size_t i : response.levels)
+      table[r][levels.levels()[i].series].used_in.emplace_back("linearity");
 
-    for (Quantity& q : region_quantities(levels, gain, response, pattern, dark)) out.quantities.push_back(std::move(q));
+    for (Quantity& q : region_quantities(levels, gain, response, pattern, dark))
+      out.quantities.push_back(std::move(q));
     for (Finding& f : region_findings(levels, gain, response, rows)) out.findings.push_back(std::move(f));
     append(out.correlations, gain.correlations, regions > 1 ? "@" + input.regions[r].name : "");
     out.curves.push_back(region_curves(levels, gain, response, dark, rows));

@@ -11,7 +11,8 @@ DarkCurrent find_dark_current(const RegionLevels& levels) {
   const AnalysisInput& input = levels.input();
   // The largest set of darks that were taken alike.
   for (std::size_t s = 0; s < input.series.size(); ++s) {
-    if (input.series[s].conditions.kind == SeriesKind::flat || !input.series[s].conditions.exposure_s) continue;
+    if (input.series[s].conditions.kind == SeriesKind::flat || !input.series[s].conditions.exposure_s)
+      continue;
     std::vector<std::size_t> alike = matching_darks(input, input.series[s].conditions);
     std::erase_if(alike, [&](std::size_t k) { return !input.series[k].conditions.exposure_s; });
     if (exposure_count(input, alike) > exposure_count(input, out.series)) out.series = alike;
@@ -25,8 +26,10 @@ DarkCurrent find_dark_current(const RegionLevels& levels) {
   double dof = levels.offset_jitter_dof();
   for (const std::size_t s : out.series) {
     // All darks share the scatter between frames; what differs is how many frames average it.
-    points.push_back({*input.series[s].conditions.exposure_s, levels.summary(s).mean, static_cast<double>(levels.summary(s).frames)});
-    if (input.series[s].conditions.temperature_c) out.temperature_c = input.series[s].conditions.temperature_c;
+    points.push_back({*input.series[s].conditions.exposure_s, levels.summary(s).mean,
+                      static_cast<double>(levels.summary(s).frames)});
+    if (input.series[s].conditions.temperature_c)
+      out.temperature_c = input.series[s].conditions.temperature_c;
   }
   const auto line = fit_line(points);
   if (!line) {
@@ -47,15 +50,18 @@ DarkCurrent find_dark_current(const RegionLevels& levels) {
   for (const LinePoint& p : points) moment += p.weight * (p.x - centre) * (p.x - centre);
   double variance = 0;
   for (std::size_t i = 0; i < points.size(); ++i)
-    variance += std::pow(points[i].weight * (points[i].x - centre) / moment * levels.mean_uncertainty(out.series[i]), 2);
+    variance += std::pow(
+        points[i].weight * (points[i].x - centre) / moment * levels.mean_uncertainty(out.series[i]), 2);
   if (variance <= 0) {
     out.reason = "the darks show no noise, so nothing is known of the uncertainty";
     return out;
   }
   const bool scatter_matters = levels.offset_jitter_dn() > 0 && dof > 0;
-  out.dn_per_s = Estimate{line->slope, std::sqrt(variance), 0.0, scatter_matters ? std::optional(dof) : std::nullopt};
+  out.dn_per_s =
+      Estimate{line->slope, std::sqrt(variance), 0.0, scatter_matters ? std::optional(dof) : std::nullopt};
   out.note = std::to_string(exposure_count(input, out.series)) + " exposures";
-  if (line->slope < 0) out.note += "; negative: the camera may regulate its dark level, which hides dark current";
+  if (line->slope < 0)
+    out.note += "; negative: the camera may regulate its dark level, which hides dark current";
   return out;
 }
 

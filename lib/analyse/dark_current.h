@@ -1,6 +1,7 @@
 #pragma once
-/// Dark current of one region from the means of darks of several exposures: slope of the straight line, weighted by frames.
-/// Its uncertainty is that of the sensor at hand: temporal noise and the scatter of the dark level between frames.
+/// Dark current of one region from the means of darks of several exposures: slope of the straight line,
+/// weighted by frames. Its uncertainty is that of the sensor at hand: temporal noise and the scatter of the
+/// dark level between frames.
 
 #include <optional>
 #include <string>

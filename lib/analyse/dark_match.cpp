@@ -22,14 +22,18 @@ SeriesWeights mean_weights(const std::vector<std::size_t>& series, const std::ve
   return out;
 }
 
-std::vector<double> frames_of(const AnalysisInput& input, std::size_t region, const std::vector<std::size_t>& series) {
+std::vector<double> frames_of(const AnalysisInput& input,
+                              std::size_t region,
+                              const std::vector<std::size_t>& series) {
   std::vector<double> out;
   for (const std::size_t s : series) out.push_back(input.series[s].regions[region].frames);
   return out;
 }
 
 /// 1 / Var(V), from the degrees of freedom.
-std::vector<double> variance_precision(const AnalysisInput& input, std::size_t region, const std::vector<std::size_t>& series) {
+std::vector<double> variance_precision(const AnalysisInput& input,
+                                       std::size_t region,
+                                       const std::vector<std::size_t>& series) {
   std::vector<double> out;
   for (const std::size_t s : series) {
     const RegionSummary& summary = input.series[s].regions[region];
@@ -60,7 +64,8 @@ int exposure_count(const AnalysisInput& input, const std::vector<std::size_t>& s
   return static_cast<int>(exposures.size());
 }
 
-std::vector<std::size_t> shortest_exposure(const AnalysisInput& input, const std::vector<std::size_t>& darks) {
+std::vector<std::size_t> shortest_exposure(const AnalysisInput& input,
+                                           const std::vector<std::size_t>& darks) {
   std::optional<double> shortest;
   for (const std::size_t s : darks) {
     const auto& exposure = input.series[s].conditions.exposure_s;
@@ -89,7 +94,8 @@ SeriesWeights line_weights(const AnalysisInput& input,
     moment += precision[i] * (exposure(i) - centre) * (exposure(i) - centre);
   SeriesWeights out;
   for (std::size_t i = 0; i < series.size(); ++i)
-    out.emplace_back(series[i], precision[i] * (1 / sum + (exposure_s - centre) * (exposure(i) - centre) / moment));
+    out.emplace_back(series[i],
+                     precision[i] * (1 / sum + (exposure_s - centre) * (exposure(i) - centre) / moment));
   return out;
 }
 
@@ -113,7 +119,8 @@ MatchedDark match_dark(const AnalysisInput& input, std::size_t region, const Con
     out.mean = mean_weights(darks, frames_of(input, region, darks));
     const auto repeated = with_frames(darks);
     if (!repeated.empty()) out.variance = mean_weights(repeated, variance_precision(input, region, repeated));
-    if (!out.exposure_unknown) out.exposure_difference_s = *flat.exposure_s - *input.series[darks.front()].conditions.exposure_s;
+    if (!out.exposure_unknown)
+      out.exposure_difference_s = *flat.exposure_s - *input.series[darks.front()].conditions.exposure_s;
     return out;
   }
   out.mean = line_weights(input, darks, frames_of(input, region, darks), *flat.exposure_s);
@@ -126,7 +133,8 @@ MatchedDark match_dark(const AnalysisInput& input, std::size_t region, const Con
   out.extrapolated = !above || !below;
   const auto repeated = with_frames(darks);
   if (exposure_count(input, repeated) > 1)
-    out.variance = line_weights(input, repeated, variance_precision(input, region, repeated), *flat.exposure_s);
+    out.variance =
+        line_weights(input, repeated, variance_precision(input, region, repeated), *flat.exposure_s);
   else if (!repeated.empty())
     out.variance = mean_weights(repeated, variance_precision(input, region, repeated));
   return out;

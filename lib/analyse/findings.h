@@ -1,5 +1,6 @@
 #pragma once
-/// What the session shows of itself that its owner should know, with the numbers seen and what to do about it.
+/// What the session shows of itself that its owner should know, with the numbers seen and what to do about
+/// it.
 
 #include <vector>
 

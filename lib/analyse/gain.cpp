@@ -13,19 +13,24 @@
 namespace evenfield {
 namespace {
 
-/// Dark current may make up this share of the dark variance before read noise is extrapolated to zero exposure.
+/// Dark current may make up this share of the dark variance before read noise is extrapolated to zero
+/// exposure.
 constexpr double kDarkCurrentShare = 0.05;
 
 enum Statistic { kGain, kInverse, kOrigin, kNoiseDn, kNoiseE, kStatistics };
 constexpr std::array<const char*, kStatistics> kNames{"conversion_gain_dn_per_e", "conversion_gain_e_per_dn",
-                                                      "conversion_gain_origin_line_dn_per_e", "read_noise_dn", "read_noise_e"};
+                                                      "conversion_gain_origin_line_dn_per_e", "read_noise_dn",
+                                                      "read_noise_e"};
 
 using Statistics = std::array<std::optional<double>, kStatistics>;
 
 /// Everything that the jackknife computes again for each unit it leaves out.
 class GainProblem {
  public:
-  GainProblem(const RegionLevels& levels, const GainAndNoise& plan, SeriesWeights noise_dark, ResamplingUnit unit)
+  GainProblem(const RegionLevels& levels,
+              const GainAndNoise& plan,
+              SeriesWeights noise_dark,
+              ResamplingUnit unit)
       : levels_(levels), plan_(plan), noise_dark_(std::move(noise_dark)), unit_(unit) {}
 
   Statistics at(int left_out, VarianceLine* line = nullptr);
@@ -97,8 +102,9 @@ Statistics GainProblem::at(int left_out, VarianceLine* line) {
   return out;
 }
 
-/// Pixels of a row that share noise make blocks side by side move together; bands of rows then are what is independent.
-/// Row noise matters where it makes up a tenth of the variance of V: (share of row noise)^2 x pixels of a row.
+/// Pixels of a row that share noise make blocks side by side move together; bands of rows then are what is
+/// independent. Row noise matters where it makes up a tenth of the variance of V: (share of row noise)^2 x
+/// pixels of a row.
 bool rows_are_correlated(const RegionLevels& levels, const std::vector<std::size_t>& series) {
   for (const std::size_t s : series) {
     const RegionSummary& summary = levels.summary(s);
@@ -123,7 +129,8 @@ void plan_gain(const RegionLevels& levels, GainAndNoise& out) {
   bool no_dark_variance = false;
   for (std::size_t i = 0; i < levels.levels().size(); ++i) {
     const Level& level = levels.levels()[i];
-    if (levels.saturated(level) || level.signal <= 0 || level.signal > kGainRange * levels.top().signal_dn) continue;
+    if (levels.saturated(level) || level.signal <= 0 || level.signal > kGainRange * levels.top().signal_dn)
+      continue;
     if (!level.variance) {
       one_frame = true;
     } else if (!level.dark_variance) {
@@ -138,19 +145,21 @@ void plan_gain(const RegionLevels& levels, GainAndNoise& out) {
       if (levels.levels()[i].variance && levels.levels()[i].signal > 0) out.gain_levels.push_back(i);
   if (!out.gain_levels.empty()) {
     // The reference is the shortest dark that matches the levels.
-    std::vector<std::size_t> darks =
-        matching_darks(levels.input(), levels.input().series[levels.levels()[out.gain_levels.front()].series].conditions);
+    std::vector<std::size_t> darks = matching_darks(
+        levels.input(), levels.input().series[levels.levels()[out.gain_levels.front()].series].conditions);
     std::erase_if(darks, [&](std::size_t s) { return !levels.summary(s).variance; });
     darks = shortest_exposure(levels.input(), darks);
     double dof = 0;
     for (const std::size_t s : darks) dof += levels.summary(s).dof;
     for (const std::size_t s : darks) out.reference_dark.emplace_back(s, levels.summary(s).dof / dof);
   } else if (one_frame) {
-    out.gain_reason = "needs two frames or more of the same light level: one frame does not tell noise from pattern";
+    out.gain_reason =
+        "needs two frames or more of the same light level: one frame does not tell noise from pattern";
   } else if (no_dark_variance) {
     out.gain_reason = "needs a matching dark series of two frames or more";
   } else {
-    out.gain_reason = "no level with light lies below " + std::to_string(static_cast<int>(100 * kGainRange)) + " % of the range top";
+    out.gain_reason = "no level with light lies below " + std::to_string(static_cast<int>(100 * kGainRange)) +
+                      " % of the range top";
   }
 }
 
@@ -176,7 +185,8 @@ SeriesWeights plan_noise(const RegionLevels& levels, double gain, GainAndNoise& 
   for (const std::size_t s : shortest) weights.emplace_back(s, levels.summary(s).dof / dof);
   out.read_exposure_s = input.series[shortest.front()].conditions.exposure_s;
   const std::string frames = std::to_string(levels.summary(shortest.front()).frames);
-  out.read_noise_method = "temporal variance of the darks of the shortest exposure, pixels pooled, quantization taken out";
+  out.read_noise_method =
+      "temporal variance of the darks of the shortest exposure, pixels pooled, quantization taken out";
   if (!out.read_exposure_s) {
     out.read_noise_note = "the exposure of the darks is not stated; their dark current is part of the noise";
     return weights;
@@ -191,13 +201,15 @@ SeriesWeights plan_noise(const RegionLevels& levels, double gain, GainAndNoise& 
   for (const std::size_t s : alike) {
     const RegionSummary& summary = levels.summary(s);
     frame_counts.push_back(summary.frames);
-    precision.push_back(*summary.variance > 0 ? summary.dof / (2 * *summary.variance * *summary.variance) : summary.dof);
+    precision.push_back(*summary.variance > 0 ? summary.dof / (2 * *summary.variance * *summary.variance)
+                                              : summary.dof);
   }
   const double at_zero = levels.dark_mean(line_weights(input, alike, frame_counts, 0.0));
   const double at_read = levels.dark_mean(line_weights(input, alike, frame_counts, *out.read_exposure_s));
   const double dark_current_dn2 = gain * (at_read - at_zero);
   if (dark_current_dn2 < kDarkCurrentShare * levels.dark_variance(weights)) return weights;
-  out.read_noise_method = "temporal variance of the darks extrapolated to zero exposure, pixels pooled, quantization taken out";
+  out.read_noise_method =
+      "temporal variance of the darks extrapolated to zero exposure, pixels pooled, quantization taken out";
   out.read_exposure_s = 0.0;
   return line_weights(input, alike, precision, 0.0);
 }
@@ -219,7 +231,8 @@ GainAndNoise find_gain_and_noise(const RegionLevels& levels) {
   std::vector<std::size_t> used;
   for (const std::size_t index : out.gain_levels) used.push_back(levels.levels()[index].series);
   for (const auto& [series, weight] : noise_dark) used.push_back(series);
-  const ResamplingUnit unit = rows_are_correlated(levels, used) ? ResamplingUnit::bands : ResamplingUnit::blocks;
+  const ResamplingUnit unit =
+      rows_are_correlated(levels, used) ? ResamplingUnit::bands : ResamplingUnit::blocks;
 
   GainProblem problem(levels, out, noise_dark, unit);
   whole = problem.at(-1, &line);
@@ -236,8 +249,10 @@ GainAndNoise find_gain_and_noise(const RegionLevels& levels) {
   if (!noise_dark.empty()) {
     const double variance = levels.dark_variance(noise_dark);
     if (variance <= kUnresolvedVariance * step * step || !whole[kNoiseDn]) {
-      out.read_noise_reason = variance <= 0 ? "the darks show no noise at all; frames that were never read out look like this"
-                                            : "the step of the codes hides the noise; the upper limit is that of EMVA 1288 (from memory)";
+      out.read_noise_reason =
+          variance <= 0
+              ? "the darks show no noise at all; frames that were never read out look like this"
+              : "the step of the codes hides the noise; the upper limit is that of EMVA 1288 (from memory)";
       if (variance > 0) out.read_noise_high95_dn = unresolved_noise_limit(step);
       std::erase(present, kNoiseDn);
       std::erase(present, kNoiseE);
@@ -265,13 +280,15 @@ GainAndNoise find_gain_and_noise(const RegionLevels& levels) {
     if (whole[kNoiseDn]) out.read_noise_reason = "no uncertainty could be had: " + resampled.error().what;
     return out;
   }
-  const std::array<std::optional<Estimate>*, kStatistics> targets{&out.gain, nullptr, &out.origin_gain, &out.read_noise_dn, &out.read_noise_e};
+  const std::array<std::optional<Estimate>*, kStatistics> targets{&out.gain, nullptr, &out.origin_gain,
+                                                                  &out.read_noise_dn, &out.read_noise_e};
   for (std::size_t k = 0; k < present.size(); ++k) {
     const int column = static_cast<int>(k);
     const auto statistic = static_cast<std::size_t>(present[k]);
     out.correlations.names.emplace_back(kNames[statistic]);
     if (targets[statistic] != nullptr)
-      *targets[statistic] = Estimate{*whole[statistic], std::sqrt(resampled->covariance(column, column)), 0.0, resampled->degrees_of_freedom};
+      *targets[statistic] = Estimate{*whole[statistic], std::sqrt(resampled->covariance(column, column)), 0.0,
+                                     resampled->degrees_of_freedom};
   }
   const Matrix correlation = correlation_of(resampled->covariance);
   for (int i = 0; i < correlation.rows; ++i) {
@@ -292,8 +309,10 @@ GainAndNoise find_gain_and_noise(const RegionLevels& levels) {
     };
     const int line_column = column(kGain);
     const int origin_column = column(kOrigin);
-    const double variance = c(line_column, line_column) + c(origin_column, origin_column) - 2 * c(line_column, origin_column);
-    if (variance > 0) out.origin_disagreement = (out.origin_gain->value - out.gain->value) / std::sqrt(variance);
+    const double variance =
+        c(line_column, line_column) + c(origin_column, origin_column) - 2 * c(line_column, origin_column);
+    if (variance > 0)
+      out.origin_disagreement = (out.origin_gain->value - out.gain->value) / std::sqrt(variance);
   }
   out.gain_note = unit == ResamplingUnit::bands ? "rows share noise, so bands of rows were resampled" : "";
   return out;

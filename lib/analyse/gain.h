@@ -1,12 +1,13 @@
 #pragma once
-/// Conversion gain and read noise of one region, with the block jackknife that gives both their uncertainty: they share
-/// darks, and read noise in electrons shares the gain.
+/// Conversion gain and read noise of one region, with the block jackknife that gives both their uncertainty:
+/// they share darks, and read noise in electrons shares the gain.
 ///
-/// Gain: V - (V_dark(t) - V_dark(t0)) = V_dark(t0) + K x over the unsaturated levels of up to 70 % of the range top, by
-/// maximum likelihood, the dark level at the shortest exposure t0 included as a point (METHODS of photon transfer: Janesick
-/// 2007; weights: model/variance_line.h). Origin line: V - V_dark = K x, unweighted, as EMVA 1288 draws it (from memory).
-/// Read noise: darks of the shortest exposure if dark current is below 5 % of their variance, else extrapolated to zero
-/// exposure; quantization step^2/12 taken out.
+/// Gain: V - (V_dark(t) - V_dark(t0)) = V_dark(t0) + K x over the unsaturated levels of up to 70 % of the
+/// range top, by maximum likelihood, the dark level at the shortest exposure t0 included as a point (METHODS
+/// of photon transfer: Janesick 2007; weights: model/variance_line.h). Origin line: V - V_dark = K x,
+/// unweighted, as EMVA 1288 draws it (from memory). Read noise: darks of the shortest exposure if dark
+/// current is below 5 % of their variance, else extrapolated to zero exposure; quantization step^2/12 taken
+/// out.
 
 #include <optional>
 #include <string>
@@ -25,14 +26,15 @@ struct GainAndNoise {
   std::optional<double> read_noise_high95_dn;  ///< where noise is hidden by the step of the codes
   std::string gain_reason, read_noise_reason;  ///< why there is none
   std::string gain_note, read_noise_method, read_noise_note;
-  std::vector<std::size_t> gain_levels;        ///< indices into RegionLevels::levels()
+  std::vector<std::size_t> gain_levels;  ///< indices into RegionLevels::levels()
   double line_intercept_dn2 = 0;
-  double dark_excess_at(const RegionLevels& levels, const Level& level) const;  ///< V_dark(t) - V_dark(t0) [DN^2]
-  SeriesWeights reference_dark;                ///< V_dark(t0)
-  std::optional<double> read_exposure_s;       ///< exposure of the darks behind read noise; 0 if extrapolated
-  double chi2 = 0, chi2_dof = 0;               ///< of the line
-  double origin_disagreement = 0;              ///< origin line less line, in standard uncertainties of the difference
-  Correlations correlations;                   ///< of gain, its inverse, origin gain and read noise
+  double dark_excess_at(const RegionLevels& levels,
+                        const Level& level) const;  ///< V_dark(t) - V_dark(t0) [DN^2]
+  SeriesWeights reference_dark;                     ///< V_dark(t0)
+  std::optional<double> read_exposure_s;  ///< exposure of the darks behind read noise; 0 if extrapolated
+  double chi2 = 0, chi2_dof = 0;          ///< of the line
+  double origin_disagreement = 0;  ///< origin line less line, in standard uncertainties of the difference
+  Correlations correlations;       ///< of gain, its inverse, origin gain and read noise
 };
 
 GainAndNoise find_gain_and_noise(const RegionLevels& levels);

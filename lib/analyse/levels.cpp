@@ -73,7 +73,8 @@ Codes find_codes(const AnalysisInput& input) {
   if (!input.floating && (out.step_dn == 0 || !stepped)) out.step_dn = 1;
   if (input.floating && !stepped) out.step_dn = 0;
 
-  // A code that most pixels of some block of the brightest series show is where they stop, whatever stops them there.
+  // A code that most pixels of some block of the brightest series show is where they stop, whatever stops
+  // them there.
   double most = 0;
   if (bright != nullptr)
     for (const RegionSummary& region : bright->regions)
@@ -90,7 +91,8 @@ Codes find_codes(const AnalysisInput& input) {
       }
   if (out.step_dn > 0) {
     const double steps = std::round(highest / out.step_dn);
-    // Codes in the high bits are stepped by a power of two; the converter's own codes are then highest / step.
+    // Codes in the high bits are stepped by a power of two; the converter's own codes are then highest /
+    // step.
     const bool fits = input.bit_depth && steps <= std::ldexp(1.0, *input.bit_depth) - 1;
     const int bits = fits ? *input.bit_depth : usual_bit_depth(steps);
     if (!fits) out.inferred_bit_depth = bits;
@@ -112,10 +114,12 @@ RegionLevels::RegionLevels(const AnalysisInput& input, std::size_t region, const
     level.variance = flat.variance;
     if (!level.dark.variance.empty()) level.dark_variance = dark_variance(level.dark.variance);
     level.saturated_fraction = saturated_share(flat);
-    for (const auto& [dark, weight] : level.dark.mean) level.saturated_fraction -= weight * saturated_share(summary(dark));
+    for (const auto& [dark, weight] : level.dark.mean)
+      level.saturated_fraction -= weight * saturated_share(summary(dark));
     levels_.push_back(level);
   }
-  std::stable_sort(levels_.begin(), levels_.end(), [](const Level& a, const Level& b) { return a.signal < b.signal; });
+  std::stable_sort(levels_.begin(), levels_.end(),
+                   [](const Level& a, const Level& b) { return a.signal < b.signal; });
   find_scatter();
   find_range_top();
 }
@@ -164,7 +168,8 @@ double RegionLevels::mean_uncertainty(std::size_t series) const {
   const RegionSummary& s = summary(series);
   double between = jitter_ * jitter_;
   if (input_.series[series].conditions.kind == SeriesKind::flat) {
-    const auto level = std::find_if(levels_.begin(), levels_.end(), [&](const Level& l) { return l.series == series; });
+    const auto level =
+        std::find_if(levels_.begin(), levels_.end(), [&](const Level& l) { return l.series == series; });
     const double signal = level == levels_.end() ? s.mean : level->signal;
     between += flicker_ * flicker_ * signal * signal;
   }
@@ -190,12 +195,14 @@ double RegionLevels::dark_share(const Level& level, std::size_t block) const {
   return share;
 }
 
-/// Signal of the block where `kSaturatedShare` of its pixels show the top code; infinite if none of the levels gets there, NaN
-/// if all of them do.
-/// Between the last level below and the first level above, the share is that of a normal distribution cut off at the top
-/// code, whose spread is the temporal noise, scaled as shot noise from the level below, and the unevenness inside the
-/// block; where that leaves the interval of the two levels, the share is interpolated on a straight line.
-double RegionLevels::saturation_signal(std::size_t block, const std::vector<const Level*>& rising, double& noise) const {
+/// Signal of the block where `kSaturatedShare` of its pixels show the top code; infinite if none of the
+/// levels gets there, NaN if all of them do. Between the last level below and the first level above, the
+/// share is that of a normal distribution cut off at the top code, whose spread is the temporal noise, scaled
+/// as shot noise from the level below, and the unevenness inside the block; where that leaves the interval of
+/// the two levels, the share is interpolated on a straight line.
+double RegionLevels::saturation_signal(std::size_t block,
+                                       const std::vector<const Level*>& rising,
+                                       double& noise) const {
   const Level* below = nullptr;
   for (const Level* level : rising) {
     const RegionSummary& flat = summary(level->series);
@@ -211,7 +218,8 @@ double RegionLevels::saturation_signal(std::size_t block, const std::vector<cons
     if (below == nullptr) return std::numeric_limits<double>::quiet_NaN();
     const RegionSummary& lower_flat = summary(below->series);
     double lower_dark = 0;
-    for (const auto& [series, weight] : below->dark.mean) lower_dark += weight * summary(series).block_mean[block];
+    for (const auto& [series, weight] : below->dark.mean)
+      lower_dark += weight * summary(series).block_mean[block];
     const double lower = lower_flat.block_mean[block] - lower_dark;
     const double dof = lower_flat.block_dof[block];
     const double temporal = dof > 0 ? lower_flat.block_squares[block] / dof : 0.0;
@@ -271,11 +279,12 @@ void RegionLevels::find_range_top() {
   std::vector<double> deviations;
   for (const double s : signals)
     if (std::isfinite(s)) deviations.push_back(std::abs(s - middle));
-  // Spread of the blocks' median (1.4826 x median deviation, 1.2533 / sqrt(blocks)), and half a standard deviation of the
-  // pixels, evenly distributed, for what is not known of the shape of the cut distribution.
+  // Spread of the blocks' median (1.4826 x median deviation, 1.2533 / sqrt(blocks)), and half a standard
+  // deviation of the pixels, evenly distributed, for what is not known of the shape of the cut distribution.
   const double blocks = 1.2533 * 1.4826 * median(deviations) / std::sqrt(static_cast<double>(signals.size()));
   top_.uncertainty_dn = std::hypot(blocks, 0.5 * top_.noise_dn / std::sqrt(3.0));
-  if (top_.uncertainty_dn <= 0) top_.unresolved = "the frames show no noise, so nothing is known of the uncertainty";
+  if (top_.uncertainty_dn <= 0)
+    top_.unresolved = "the frames show no noise, so nothing is known of the uncertainty";
 }
 
 }  // namespace evenfield

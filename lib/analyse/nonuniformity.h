@@ -1,6 +1,7 @@
 #pragma once
-/// DSNU and PRNU of one region: spatial variance of the mean dark and flat frame, temporal noise taken out (model/spatial.h).
-/// The pattern is that of the sensor at hand, so that temporal noise alone makes the numbers uncertain.
+/// DSNU and PRNU of one region: spatial variance of the mean dark and flat frame, temporal noise taken out
+/// (model/spatial.h). The pattern is that of the sensor at hand, so that temporal noise alone makes the
+/// numbers uncertain.
 
 #include <optional>
 #include <string>
@@ -19,7 +20,8 @@ struct SpatialEstimate {
 struct Nonuniformity {
   std::optional<SpatialEstimate> dark;  ///< DSNU^2: darks of most frames, the shortest of them
   std::string dark_reason;
-  std::optional<SpatialEstimate> light;  ///< of the unsaturated flat nearest half of the range top, its dark's taken off
+  std::optional<SpatialEstimate>
+      light;  ///< of the unsaturated flat nearest half of the range top, its dark's taken off
   double light_signal_dn = 0;
   double light_signal_uncertainty_dn = 0;
   std::string light_reason;

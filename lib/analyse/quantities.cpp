@@ -14,7 +14,11 @@ constexpr double kCoverage = 0.95;
 
 }  // namespace
 
-Quantity known(std::string name, const std::string& region, const Estimate& estimate, std::string method, std::string note) {
+Quantity known(std::string name,
+               const std::string& region,
+               const Estimate& estimate,
+               std::string method,
+               std::string note) {
   Quantity q;
   q.name = std::move(name);
   q.region = region;
@@ -60,7 +64,8 @@ Quantity root_of_square(std::string name,
   q.method = std::move(method);
   if (square <= 0) {
     const double one_sided = normal_quantile(kCoverage);
-    // Counted from zero: a square that came out far below it by chance must not promise that there is no pattern at all.
+    // Counted from zero: a square that came out far below it by chance must not promise that there is no
+    // pattern at all.
     q.high95 = std::sqrt(one_sided * square_uncertainty) / divisor;
     q.note = "not resolved: less than the temporal noise can hide; the upper limit is one-sided";
     if (!note.empty()) q.note += "; " + note;

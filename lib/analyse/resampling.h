@@ -1,6 +1,6 @@
 #pragma once
-/// Sums of a summary over the units that the jackknife leaves out one by one: blocks, or bands of whole rows of blocks
-/// where the pixels of a row share noise.
+/// Sums of a summary over the units that the jackknife leaves out one by one: blocks, or bands of whole rows
+/// of blocks where the pixels of a row share noise.
 
 #include <vector>
 

@@ -10,8 +10,11 @@ namespace {
 
 constexpr int kFewestLevels = 3;
 
-/// Uncertainty of LE: each signal is moved by its own uncertainty and the error computed again; the moves add in squares.
-double propagated(const std::vector<ResponsePoint>& points, const std::vector<double>& uncertainty, double error_percent) {
+/// Uncertainty of LE: each signal is moved by its own uncertainty and the error computed again; the moves add
+/// in squares.
+double propagated(const std::vector<ResponsePoint>& points,
+                  const std::vector<double>& uncertainty,
+                  double error_percent) {
   double squares = 0;
   for (std::size_t i = 0; i < points.size(); ++i) {
     if (uncertainty[i] <= 0) continue;
@@ -53,12 +56,14 @@ Response find_response(const RegionLevels& levels) {
   }
   if (static_cast<int>(points.size()) < kFewestLevels) {
     out.levels.clear();
-    out.reason = without_exposure ? "needs exposure_s of the flats"
-                                  : "needs three levels or more between 5 and 95 % of the range top; there are " +
-                                        std::to_string(points.size());
+    out.reason = without_exposure
+                     ? "needs exposure_s of the flats"
+                     : "needs three levels or more between 5 and 95 % of the range top; there are " +
+                           std::to_string(points.size());
     return out;
   }
-  if (std::all_of(points.begin(), points.end(), [&](const ResponsePoint& p) { return p.exposure == points.front().exposure; })) {
+  if (std::all_of(points.begin(), points.end(),
+                  [&](const ResponsePoint& p) { return p.exposure == points.front().exposure; })) {
     out.levels.clear();
     out.reason = "needs levels of different exposure_s x light; all have the same";
     return out;
@@ -76,7 +81,8 @@ Response find_response(const RegionLevels& levels) {
   for (std::size_t i = 0; i < points.size(); ++i) {
     const Level& level = levels.levels()[out.levels[i]];
     double dark = 0;
-    for (const auto& [series, weight] : level.dark.mean) dark += std::pow(weight * levels.mean_uncertainty(series), 2);
+    for (const auto& [series, weight] : level.dark.mean)
+      dark += std::pow(weight * levels.mean_uncertainty(series), 2);
     const double flat = levels.mean_uncertainty(level.series);
     statistical.push_back(std::sqrt(flat * flat + dark));
     common.push_back(points[i].signal * levels.input().level_relative_uncertainty);
@@ -85,8 +91,8 @@ Response find_response(const RegionLevels& levels) {
   out.error_percent = Estimate{line->error_percent, propagated(points, statistical, line->error_percent),
                                propagated(points, common, line->error_percent), std::nullopt};
   out.floor_percent = linearity_floor_percent(std::sqrt(relative / static_cast<double>(points.size())));
-  out.note = std::to_string(points.size()) + " levels; noise of light and camera alone would show " + to_text(out.floor_percent, 2) +
-             " %; camera and lamp are not told apart";
+  out.note = std::to_string(points.size()) + " levels; noise of light and camera alone would show " +
+             to_text(out.floor_percent, 2) + " %; camera and lamp are not told apart";
   return out;
 }
 

@@ -1,5 +1,6 @@
 #pragma once
-/// Response and linearity error of one region: signal against exposure x light, after EMVA 1288 (model/linearity.h).
+/// Response and linearity error of one region: signal against exposure x light, after EMVA 1288
+/// (model/linearity.h).
 
 #include <optional>
 #include <string>
@@ -11,7 +12,7 @@
 
 namespace evenfield {
 
-inline constexpr double kLinearityLow = 0.05;   ///< of the range top
+inline constexpr double kLinearityLow = 0.05;  ///< of the range top
 inline constexpr double kLinearityHigh = 0.95;
 
 struct Response {

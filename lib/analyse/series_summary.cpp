@@ -46,8 +46,8 @@ double scatter(const std::vector<double>& values) {
   return squares / (n - 1);
 }
 
-/// Temporal variance shared by the pixels of a row: row means with the frame's and the row's own mean taken out. And the
-/// variance of the rows' means over frames.
+/// Temporal variance shared by the pixels of a row: row means with the frame's and the row's own mean taken
+/// out. And the variance of the rows' means over frames.
 void find_row_noise(const RegionStatistics& region, double dark_level, RegionSummary& s) {
   const auto rows = static_cast<std::size_t>(region.rect.height);
   const auto frames = static_cast<std::size_t>(s.frames);
@@ -101,14 +101,16 @@ RegionSummary summarize(const RegionStatistics& region, std::optional<double> da
   for (const std::int64_t hits : region.frame_hits) s.hits += hits;
   s.scales.assign(frames, 1.0);
 
-  // A scale is told from the frame means; where their own noise exceeds a per cent of the signal, offsets serve better.
+  // A scale is told from the frame means; where their own noise exceeds a per cent of the signal, offsets
+  // serve better.
   double offset_squares = 0;
   for (std::size_t b = 0; b < blocks; ++b) {
     const BlockSums sums = block_sums(region, b, s.frames, s.block_mean[b]);
     for (std::size_t f = 0; f < frames; ++f) offset_squares += sums.square[f];
     offset_squares -= sums.total_square / s.frames;
   }
-  const double rough_variance = frames > 1 ? std::max(0.0, offset_squares) / (s.pixels * (s.frames - 1)) : 0.0;
+  const double rough_variance =
+      frames > 1 ? std::max(0.0, offset_squares) / (s.pixels * (s.frames - 1)) : 0.0;
   const double signal = dark_level ? s.mean - *dark_level : 0.0;
   s.scaled = dark_level && frames > 1 && signal > 100.0 * std::sqrt(rough_variance / s.pixels);
   if (s.scaled)
@@ -134,7 +136,8 @@ RegionSummary summarize(const RegionStatistics& region, std::optional<double> da
     }
     s.block_squares.push_back(std::max(0.0, block));
     // Scales or offsets were taken from the region's own means, which costs F - 1 of all degrees of freedom.
-    s.block_dof.push_back(s.block_pixels[b] * (s.frames - 1) * (1 - 1 / s.pixels) - static_cast<double>(region.block_hits[b]));
+    s.block_dof.push_back(s.block_pixels[b] * (s.frames - 1) * (1 - 1 / s.pixels) -
+                          static_cast<double>(region.block_hits[b]));
     squares += s.block_squares.back();
     s.dof += s.block_dof.back();
     spatial += block_sums(region, b, s.frames, s.mean).total_square;

@@ -9,9 +9,12 @@ enum class SeriesKind { flat, dark, bias };  ///< a bias is a dark of zero expos
 
 constexpr const char* name_of(SeriesKind kind) {
   switch (kind) {
-    case SeriesKind::flat: return "flat";
-    case SeriesKind::dark: return "dark";
-    case SeriesKind::bias: return "bias";
+    case SeriesKind::flat:
+      return "flat";
+    case SeriesKind::dark:
+      return "dark";
+    case SeriesKind::bias:
+      return "bias";
   }
   return "";
 }

@@ -19,10 +19,14 @@ std::string to_line(const Error& error) {
 
 int exit_status(Errc code) {
   switch (code) {
-    case Errc::usage: return 2;
-    case Errc::input: return 3;
-    case Errc::output: return 5;
-    case Errc::interrupted: return 130;
+    case Errc::usage:
+      return 2;
+    case Errc::input:
+      return 3;
+    case Errc::output:
+      return 5;
+    case Errc::interrupted:
+      return 130;
   }
   return 3;
 }

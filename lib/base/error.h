@@ -16,9 +16,9 @@ enum class Errc { usage, input, output, interrupted };
 
 struct Where {
   std::filesystem::path file;
-  std::optional<int> line;   ///< from 1, of a text file
-  std::optional<int> page;   ///< from 1, TIFF page or FITS extension (the primary is 1)
-  std::string key;           ///< key of a text file, tag or keyword of a header
+  std::optional<int> line;  ///< from 1, of a text file
+  std::optional<int> page;  ///< from 1, TIFF page or FITS extension (the primary is 1)
+  std::string key;          ///< key of a text file, tag or keyword of a header
 };
 
 struct Error {
@@ -39,8 +39,10 @@ class [[nodiscard]] Result {
   std::variant<T, Error> state_;
 
  public:
-  Result(T value) : state_(std::in_place_index<0>, std::move(value)) {}      // NOLINT(google-explicit-constructor)
-  Result(Error error) : state_(std::in_place_index<1>, std::move(error)) {}  // NOLINT(google-explicit-constructor)
+  Result(T value)
+      : state_(std::in_place_index<0>, std::move(value)) {}  // NOLINT(google-explicit-constructor)
+  Result(Error error)
+      : state_(std::in_place_index<1>, std::move(error)) {}  // NOLINT(google-explicit-constructor)
   explicit operator bool() const { return state_.index() == 0; }
   T& operator*() { return std::get<0>(state_); }
   const T& operator*() const { return std::get<0>(state_); }

@@ -14,8 +14,11 @@ namespace {
 std::size_t utf8_length(std::string_view text, std::size_t i) {
   const auto byte = [&](std::size_t k) { return static_cast<unsigned char>(text[k]); };
   const unsigned lead = byte(i);
-  const std::size_t length = lead < 0x80 ? 1 : lead >= 0xC2 && lead < 0xE0 ? 2 : lead >= 0xE0 && lead < 0xF0 ? 3
-                             : lead >= 0xF0 && lead < 0xF5 ? 4 : 0;
+  const std::size_t length = lead < 0x80                   ? 1
+                             : lead >= 0xC2 && lead < 0xE0 ? 2
+                             : lead >= 0xE0 && lead < 0xF0 ? 3
+                             : lead >= 0xF0 && lead < 0xF5 ? 4
+                                                           : 0;
   if (length == 0 || i + length > text.size()) return 0;
   for (std::size_t k = 1; k < length; ++k)
     if ((byte(i + k) & 0xC0U) != 0x80U) return 0;
@@ -58,7 +61,8 @@ std::string to_text(double value, int digits) {
   if (std::isnan(value)) return "nan";
   std::array<char, 64> buffer{};
   const auto end =
-      std::to_chars(buffer.data(), buffer.data() + buffer.size(), value, std::chars_format::general, digits).ptr;
+      std::to_chars(buffer.data(), buffer.data() + buffer.size(), value, std::chars_format::general, digits)
+          .ptr;
   return {buffer.data(), end};
 }
 
@@ -93,7 +97,8 @@ std::vector<std::string> near_names(std::string_view name, const std::vector<std
     const std::size_t distance = edit_distance(name, candidate);
     if (distance <= std::max<std::size_t>(2, name.size() / 3)) ranked.emplace_back(distance, candidate);
   }
-  std::stable_sort(ranked.begin(), ranked.end(), [](const auto& a, const auto& b) { return a.first < b.first; });
+  std::stable_sort(ranked.begin(), ranked.end(),
+                   [](const auto& a, const auto& b) { return a.first < b.first; });
   std::vector<std::string> out;
   for (const auto& [distance, candidate] : ranked)
     if (out.size() < 3) out.push_back(candidate);

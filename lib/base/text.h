@@ -1,5 +1,6 @@
 #pragma once
-/// Numbers and names as text, the same on every machine: no locale, shortest form that reads back bit-exactly.
+/// Numbers and names as text, the same on every machine: no locale, shortest form that reads back
+/// bit-exactly.
 
 #include <string>
 #include <string_view>
@@ -17,8 +18,8 @@ std::string to_text(double value, int digits);
 /// a file can steer a terminal, a log or a page.
 std::string escape_control(std::string_view text);
 
-/// Up to three entries of `known` that are near `name` (edit distance at most 2, or a third of its length), for
-/// "did you mean".
+/// Up to three entries of `known` that are near `name` (edit distance at most 2, or a third of its length),
+/// for "did you mean".
 std::vector<std::string> near_names(std::string_view name, const std::vector<std::string>& known);
 
 }  // namespace evenfield

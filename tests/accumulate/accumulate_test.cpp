@@ -1,3 +1,5 @@
+#include "accumulate/accumulate.h"
+
 #include <doctest/doctest.h>
 
 #include <algorithm>
@@ -7,7 +9,6 @@
 #include <cmath>
 #include <cstring>
 
-#include "accumulate/accumulate.h"
 #include "accumulate/raw_frames.h"
 
 using namespace evenfield;
@@ -23,7 +24,9 @@ void check_against_definitions(const RawFrames<T>& raw, const RegionStatistics& 
   const int count = static_cast<int>(frames.size());
   const Rect& r = region.rect;
   const BlockGrid grid = block_grid(r);
-  const auto pixel = [&](int f, int x, int y) { return static_cast<double>(frames[static_cast<std::size_t>(f)][static_cast<std::size_t>(y * width + x)]); };
+  const auto pixel = [&](int f, int x, int y) {
+    return static_cast<double>(frames[static_cast<std::size_t>(f)][static_cast<std::size_t>(y * width + x)]);
+  };
   const auto close = [&](double got, double expected, double scale) {
     REQUIRE(std::abs(got - expected) <= tolerance * (std::abs(expected) + scale));
   };
@@ -75,8 +78,10 @@ void check_against_definitions(const RawFrames<T>& raw, const RegionStatistics& 
               product += a * d;
               magnitude += std::abs(a * d);
             }
-          close(group.sums[block * static_cast<std::size_t>(group.frames) + static_cast<std::size_t>(i)], sum, 1 + std::sqrt(magnitude));
-          close(group.gram[block * pair_count(group.frames) + pair_index(i, j, group.frames)], product, 1 + magnitude);
+          close(group.sums[block * static_cast<std::size_t>(group.frames) + static_cast<std::size_t>(i)], sum,
+                1 + std::sqrt(magnitude));
+          close(group.gram[block * pair_count(group.frames) + pair_index(i, j, group.frames)], product,
+                1 + magnitude);
         }
   }
   for (int f = 0; f < count; ++f)
@@ -99,24 +104,28 @@ void check_type(double low, double high, double tolerance) {
   const auto uniform = [&] { return low + (high - low) * (static_cast<double>(random() >> 11U) * 0x1p-53); };
   for (const int frames : {1, 2, 9})
     for (const auto& [width, height] : {std::pair{200, 70}, std::pair{33, 18}}) {
-      const RawFrames<T> raw(width, height, make_frames<T>(width, height, frames, [&](int, int, int) { return uniform(); }));
+      const RawFrames<T> raw(width, height,
+                             make_frames<T>(width, height, frames, [&](int, int, int) { return uniform(); }));
       const Rect half{3, 1, width / 2, height - 2};
       const Geometry geometry = make_geometry(raw.shape(), {{0, 0, width, height}, half});
       AccumulateOptions options;
       options.hit_threshold = 0;
       const auto statistics = accumulate(raw.stack(), geometry, options);
       REQUIRE(statistics);
-      for (const RegionStatistics& region : statistics->regions) check_against_definitions(raw, region, tolerance);
+      for (const RegionStatistics& region : statistics->regions)
+        check_against_definitions(raw, region, tolerance);
     }
 }
 
 bool same_bits(const SeriesStatistics& a, const SeriesStatistics& b) {
-  bool same = a.fingerprints == b.fingerprints && a.code_sample == b.code_sample && a.regions.size() == b.regions.size();
+  bool same = a.fingerprints == b.fingerprints && a.code_sample == b.code_sample &&
+              a.regions.size() == b.regions.size();
   for (std::size_t r = 0; same && r < a.regions.size(); ++r) {
     const RegionStatistics& p = a.regions[r];
     const RegionStatistics& q = b.regions[r];
-    same = p.centre == q.centre && p.pixels == q.pixels && p.total_square == q.total_square && p.row_sums == q.row_sums &&
-           p.column_sums == q.column_sums && p.block_hits == q.block_hits && p.frame_hits == q.frame_hits && p.groups.size() == q.groups.size();
+    same = p.centre == q.centre && p.pixels == q.pixels && p.total_square == q.total_square &&
+           p.row_sums == q.row_sums && p.column_sums == q.column_sums && p.block_hits == q.block_hits &&
+           p.frame_hits == q.frame_hits && p.groups.size() == q.groups.size();
     for (std::size_t g = 0; same && g < p.groups.size(); ++g)
       same = p.groups[g].sums == q.groups[g].sums && p.groups[g].gram == q.groups[g].gram;
   }
@@ -155,7 +164,8 @@ double pooled_variance(const SeriesStatistics& s) {
   for (std::size_t b = 0; b < s.regions[0].blocks(); ++b) {
     double total = 0;
     for (const GroupStatistics& group : s.regions[0].groups)
-      for (int f = 0; f < group.frames; ++f) total += group.gram[b * pair_count(group.frames) + pair_index(f, f, group.frames)];
+      for (int f = 0; f < group.frames; ++f)
+        total += group.gram[b * pair_count(group.frames) + pair_index(f, f, group.frames)];
     squares += total - s.regions[0].total_square[b] / s.frames;
     dof += static_cast<double>(s.regions[0].pixels[b] * (s.frames - 1) - s.regions[0].block_hits[b]);
   }
@@ -171,7 +181,9 @@ TEST_CASE("sums of 8 and 16 bit integers over their whole range are exact") {
   check_type<std::int16_t>(-32768, 32767, 0);
 }
 
-TEST_CASE("sums of 12 bit data, where partial sums run long, are exact") { check_type<std::uint16_t>(0, 4095.99, 0); }
+TEST_CASE("sums of 12 bit data, where partial sums run long, are exact") {
+  check_type<std::uint16_t>(0, 4095.99, 0);
+}
 
 TEST_CASE("sums of 32 bit integers and floats agree with their definitions to rounding") {
   check_type<std::uint32_t>(0, 4294967295.0, 1e-12);
@@ -181,7 +193,9 @@ TEST_CASE("sums of 32 bit integers and floats agree with their definitions to ro
 }
 
 TEST_CASE("extreme codes alternating between 0 and 65535 do not overflow") {
-  const RawFrames<std::uint16_t> raw(128, 32, make_frames<std::uint16_t>(128, 32, 8, [](int f, int x, int y) { return (f + x + y) % 2 == 0 ? 0 : 65535; }));
+  const RawFrames<std::uint16_t> raw(128, 32, make_frames<std::uint16_t>(128, 32, 8, [](int f, int x, int y) {
+                                       return (f + x + y) % 2 == 0 ? 0 : 65535;
+                                     }));
   const auto statistics = accumulate(raw.stack(), make_geometry(raw.shape(), {{0, 0, 128, 32}}), {});
   REQUIRE(statistics);
   check_against_definitions(raw, statistics->regions[0], 0);
@@ -199,13 +213,15 @@ TEST_CASE("hits leave the variance and pixels that blink stay in") {
   boost::random::mt19937_64 random(3);
   boost::random::normal_distribution<double> noise(100.0, 5.0);
   for (const int frames : {3, 8, 16}) {
-    auto clean = make_frames<std::uint16_t>(256, 256, frames, [&](int, int, int) { return std::lround(noise(random)); });
+    auto clean = make_frames<std::uint16_t>(256, 256, frames,
+                                            [&](int, int, int) { return std::lround(noise(random)); });
     auto hit = clean;
     // Places that never meet in one pixel: two hits there would be a pixel that blinks.
     boost::random::uniform_int_distribution<std::size_t> anywhere(0, 300);
     std::size_t place = 0;
     for (auto& frame : hit)
-      for (int k = 0; k < 12; ++k) frame[place += 1 + anywhere(random)] = static_cast<std::uint16_t>(300 + 500 * k);
+      for (int k = 0; k < 12; ++k)
+        frame[place += 1 + anywhere(random)] = static_cast<std::uint16_t>(300 + 500 * k);
     const RawFrames<std::uint16_t> a(256, 256, clean);
     const RawFrames<std::uint16_t> b(256, 256, hit);
     const Geometry geometry = make_geometry(a.shape(), {{0, 0, 256, 256}});
@@ -217,12 +233,14 @@ TEST_CASE("hits leave the variance and pixels that blink stay in") {
     for (const std::int64_t n : cleaned->regions[0].frame_hits) found += n;
     for (const std::int64_t n : reference->regions[0].frame_hits) CHECK(n == 0);
     CHECK(found == 12 * frames);
-    // A sample in 5461 was replaced; leaving out that many at random changes a variance by 2e-5 (one standard deviation:
-    // sqrt(2 x 12 F) / (65536 F)), and the mean of the others instead of the best value by less.
+    // A sample in 5461 was replaced; leaving out that many at random changes a variance by 2e-5 (one standard
+    // deviation: sqrt(2 x 12 F) / (65536 F)), and the mean of the others instead of the best value by less.
     CHECK(pooled_variance(*cleaned) == doctest::Approx(pooled_variance(*reference)).epsilon(2e-4));
   }
   // A pixel that is high in three frames of eight blinks.
-  auto blinking = make_frames<std::uint16_t>(64, 64, 8, [&](int f, int x, int y) { return std::lround(noise(random)) + (x % 16 == 3 && y % 16 == 5 && f % 3 == 0 ? 400 : 0); });
+  auto blinking = make_frames<std::uint16_t>(64, 64, 8, [&](int f, int x, int y) {
+    return std::lround(noise(random)) + (x % 16 == 3 && y % 16 == 5 && f % 3 == 0 ? 400 : 0);
+  });
   const RawFrames<std::uint16_t> c(64, 64, blinking);
   const auto kept = accumulate(c.stack(), make_geometry(c.shape(), {{0, 0, 64, 64}}), {});
   REQUIRE(kept);
@@ -235,7 +253,8 @@ TEST_CASE("the fingerprint depends on the pixels and their places, not on the re
   std::swap(frames[0][5], frames[0][6]);
   const RawFrames<std::uint16_t> swapped(64, 64, frames);
   const auto whole = accumulate(raw.stack(), make_geometry(raw.shape(), {{0, 0, 64, 64}}), {});
-  const auto halves = accumulate(raw.stack(), make_geometry(raw.shape(), {{0, 0, 32, 64}, {32, 0, 32, 64}}), {});
+  const auto halves =
+      accumulate(raw.stack(), make_geometry(raw.shape(), {{0, 0, 32, 64}, {32, 0, 32, 64}}), {});
   const auto other = accumulate(swapped.stack(), make_geometry(raw.shape(), {{0, 0, 64, 64}}), {});
   REQUIRE(whole);
   REQUIRE(halves);
@@ -253,5 +272,6 @@ TEST_CASE("a pixel that is not a number is an error that names file and page") {
   const RawFrames<float> raw(64, 64, frames);
   const auto result = accumulate(raw.stack(), make_geometry(raw.shape(), {{0, 0, 64, 64}}), {});
   REQUIRE(!result);
-  CHECK(to_line(result.error()).find("page 3: found a pixel that is not a finite number") != std::string::npos);
+  CHECK(to_line(result.error()).find("page 3: found a pixel that is not a finite number") !=
+        std::string::npos);
 }

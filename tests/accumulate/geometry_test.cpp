@@ -1,18 +1,20 @@
+#include "accumulate/geometry.h"
+
 #include <doctest/doctest.h>
 
 #include <algorithm>
 #include <vector>
 
-#include "accumulate/geometry.h"
 #include "accumulate/series_statistics.h"
 
 using namespace evenfield;
 
 namespace {
 
-const FrameShape kShapes[] = {{2048, 2048, PixelType::u16}, {160, 128, PixelType::u16}, {2560, 2160, PixelType::u16},
-                              {8, 8, PixelType::u8},         {1, 5000, PixelType::u8},   {5000, 1, PixelType::u8},
-                              {97, 61, PixelType::u16},      {14204, 10652, PixelType::u16}};
+const FrameShape kShapes[] = {{2048, 2048, PixelType::u16}, {160, 128, PixelType::u16},
+                              {2560, 2160, PixelType::u16}, {8, 8, PixelType::u8},
+                              {1, 5000, PixelType::u8},     {5000, 1, PixelType::u8},
+                              {97, 61, PixelType::u16},     {14204, 10652, PixelType::u16}};
 
 }  // namespace
 
@@ -58,7 +60,8 @@ TEST_CASE("a region has 16 x 16 blocks, or fewer of 64 pixels or more") {
     }
     for (int i = 0; i < grid.columns; ++i)
       for (int j = 0; j < grid.rows; ++j) {
-        const int pixels = (grid.column_begin(i + 1) - grid.column_begin(i)) * (grid.row_begin(j + 1) - grid.row_begin(j));
+        const int pixels =
+            (grid.column_begin(i + 1) - grid.column_begin(i)) * (grid.row_begin(j + 1) - grid.row_begin(j));
         REQUIRE((pixels >= kBlockPixels || (grid.columns == 1 && grid.rows == 1)));
       }
   }
@@ -74,7 +77,8 @@ TEST_CASE("amplifiers side by side share bands, and no row is hashed twice") {
   for (const Geometry& geometry : {pair, overlapping}) {
     std::vector<int> count(512, 0);
     for (const Band& band : geometry.bands)
-      for (int y = 0; y < band.height; ++y) count[static_cast<std::size_t>(band.y + y)] += band.hashed[static_cast<std::size_t>(y)] ? 1 : 0;
+      for (int y = 0; y < band.height; ++y)
+        count[static_cast<std::size_t>(band.y + y)] += band.hashed[static_cast<std::size_t>(y)] ? 1 : 0;
     CHECK(std::all_of(count.begin(), count.end(), [](int n) { return n == 1; }));
   }
 }

@@ -1,6 +1,6 @@
 #pragma once
-/// Stacks of frames for tests of the engine, in raw files that the test writes and describes itself, so that no reader
-/// stands between.
+/// Stacks of frames for tests of the engine, in raw files that the test writes and describes itself, so that
+/// no reader stands between.
 
 #include <unistd.h>
 
@@ -40,7 +40,8 @@ class RawFrames {
             ("evenfield_raw_" + std::to_string(::getpid()) + "_" + std::to_string(number++));
     std::ofstream out(path_, std::ios::binary);
     FrameFile file{path_, FileFormat::tiff, {}, {}};
-    const std::uint64_t bytes = static_cast<std::uint64_t>(width) * static_cast<std::uint64_t>(height) * sizeof(T);
+    const std::uint64_t bytes =
+        static_cast<std::uint64_t>(width) * static_cast<std::uint64_t>(height) * sizeof(T);
     for (std::size_t f = 0; f < frames_.size(); ++f) {
       out.write(reinterpret_cast<const char*>(frames_[f].data()), static_cast<std::streamsize>(bytes));
       file.pages.push_back({session_.shape, {{0, height, bytes * f}}, {}});
@@ -67,7 +68,10 @@ class RawFrames {
 
 /// width x height x count pixels from a function of (frame, x, y).
 template <class T>
-std::vector<std::vector<T>> make_frames(int width, int height, int count, const std::function<double(int, int, int)>& value) {
+std::vector<std::vector<T>> make_frames(int width,
+                                        int height,
+                                        int count,
+                                        const std::function<double(int, int, int)>& value) {
   std::vector<std::vector<T>> out;
   for (int f = 0; f < count; ++f) {
     std::vector<T> frame;

@@ -6,7 +6,11 @@ using namespace evenfield;
 
 namespace {
 
-SeriesInput series(SeriesKind kind, std::optional<double> exposure, double mean, double variance, std::optional<double> temperature = {}) {
+SeriesInput series(SeriesKind kind,
+                   std::optional<double> exposure,
+                   double mean,
+                   double variance,
+                   std::optional<double> temperature = {}) {
   SeriesInput out;
   out.conditions.kind = kind;
   out.conditions.exposure_s = exposure;
@@ -38,7 +42,8 @@ Conditions flat_at(std::optional<double> exposure) {
 TEST_CASE("darks of several exposures give mean and variance at the flat's own, on a straight line") {
   AnalysisInput input;
   // mean 100 + 3 t, variance 4 + 1.5 t
-  for (const double t : {0.0, 1.0, 4.0}) input.series.push_back(series(SeriesKind::dark, t, 100 + 3 * t, 4 + 1.5 * t));
+  for (const double t : {0.0, 1.0, 4.0})
+    input.series.push_back(series(SeriesKind::dark, t, 100 + 3 * t, 4 + 1.5 * t));
   const MatchedDark dark = match_dark(input, 0, flat_at(2.0));
   CHECK(dark.line);
   CHECK(!dark.extrapolated);
@@ -47,7 +52,8 @@ TEST_CASE("darks of several exposures give mean and variance at the flat's own, 
   for (const auto& [s, weight] : dark.variance) variance += weight * *input.series[s].regions[0].variance;
   CHECK(variance == doctest::Approx(7).epsilon(1e-12));
   CHECK(match_dark(input, 0, flat_at(5.0)).extrapolated);
-  CHECK(sum(match_dark(input, 0, flat_at(5.0)).mean, input, &RegionSummary::mean) == doctest::Approx(115).epsilon(1e-12));
+  CHECK(sum(match_dark(input, 0, flat_at(5.0)).mean, input, &RegionSummary::mean) ==
+        doctest::Approx(115).epsilon(1e-12));
 }
 
 TEST_CASE("one dark exposure is used as it is, and how far it lies from the flat's is kept") {

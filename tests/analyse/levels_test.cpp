@@ -24,7 +24,8 @@ Scene camera() {
 }
 
 bool has(const Characterization& result, const char* code, Severity severity) {
-  return std::any_of(result.findings.begin(), result.findings.end(), [&](const Finding& f) { return f.code == code && f.severity == severity; });
+  return std::any_of(result.findings.begin(), result.findings.end(),
+                     [&](const Finding& f) { return f.code == code && f.severity == severity; });
 }
 
 }  // namespace
@@ -42,7 +43,8 @@ TEST_CASE("codes in the high bits keep their step, and saturation is at the high
   CHECK(std::abs(*noise.value - 3.0) < 4 * *noise.standard_uncertainty);
   // 0.2 % of the pixels at 4095: 2.878 standard deviations below it; variance there 0.5 x 3900 + 2.25 DN^2.
   const double sigma = std::sqrt(0.5 * 3870 + 2.25);
-  CHECK(*quantity(m.result, "saturation_dn").value == doctest::Approx(16 * (4094.5 - 100 - 2.878 * sigma)).epsilon(0.002));
+  CHECK(*quantity(m.result, "saturation_dn").value ==
+        doctest::Approx(16 * (4094.5 - 100 - 2.878 * sigma)).epsilon(0.002));
   CHECK(has(m.result, "saturated", Severity::info));
 }
 
@@ -59,7 +61,8 @@ TEST_CASE("a session that never saturates gives a lower limit in place of satura
   CHECK(quantity(m.result, "linearity_error_percent").value);
 }
 
-TEST_CASE("copies of frames, darks without noise and missing exposures are findings or reasons, never silence") {
+TEST_CASE(
+    "copies of frames, darks without noise and missing exposures are findings or reasons, never silence") {
   Scene scene = camera();
   add_series(scene, SeriesKind::bias, 0, 4);
   add_series(scene, SeriesKind::flat, 0.1, 4);
@@ -68,7 +71,8 @@ TEST_CASE("copies of frames, darks without noise and missing exposures are findi
   input.bit_depth = 12;
   input.regions.push_back({"whole", {0, 0, 128, 128}});
   const Geometry geometry = make_geometry({128, 128, PixelType::u16}, {{0, 0, 128, 128}});
-  const auto add = [&](SeriesKind kind, std::vector<std::vector<std::uint16_t>> frames, std::optional<double> dark) {
+  const auto add = [&](SeriesKind kind, std::vector<std::vector<std::uint16_t>> frames,
+                       std::optional<double> dark) {
     const RawFrames<std::uint16_t> raw(128, 128, std::move(frames));
     const auto sums = accumulate(raw.stack(), geometry, {});
     SeriesInput series;

@@ -25,16 +25,19 @@ Scene camera(std::uint64_t seed) {
 
 void usual_series(Scene& scene, int flat_frames = 4) {
   add_series(scene, SeriesKind::bias, 0, 8);
-  for (const double t : {0.05, 0.1, 0.2, 0.3, 0.4, 0.5, 1.0}) add_series(scene, SeriesKind::flat, t, flat_frames);
+  for (const double t : {0.05, 0.1, 0.2, 0.3, 0.4, 0.5, 1.0})
+    add_series(scene, SeriesKind::flat, t, flat_frames);
 }
 
 const Finding* finding(const Characterization& result, const std::string& code) {
-  const auto found = std::find_if(result.findings.begin(), result.findings.end(), [&](const Finding& f) { return f.code == code; });
+  const auto found = std::find_if(result.findings.begin(), result.findings.end(),
+                                  [&](const Finding& f) { return f.code == code; });
   return found == result.findings.end() ? nullptr : &*found;
 }
 
 /// Frames of a scene measured after `change` has had its way with each.
-Characterization measure_changed(const Scene& scene, const std::function<void(SeriesKind, std::vector<std::uint16_t>&)>& change) {
+Characterization measure_changed(const Scene& scene,
+                                 const std::function<void(SeriesKind, std::vector<std::uint16_t>&)>& change) {
   const Sensor sensor = realize(scene);
   AnalysisInput input;
   input.bit_depth = scene.camera.bit_depth;
@@ -66,7 +69,8 @@ Characterization measure_changed(const Scene& scene, const std::function<void(Se
 TEST_CASE("frames saturated but for a dead pixel are alike without being called copies") {
   Scene scene = camera(1);
   usual_series(scene);
-  const auto result = measure_changed(scene, [](SeriesKind, std::vector<std::uint16_t>& frame) { frame[645] = 0; });
+  const auto result =
+      measure_changed(scene, [](SeriesKind, std::vector<std::uint16_t>& frame) { frame[645] = 0; });
   CHECK(finding(result, "duplicate-frames") == nullptr);
   for (const Finding& f : result.findings) CHECK_MESSAGE(f.severity == Severity::info, f.code);
 }

@@ -1,6 +1,6 @@
 #pragma once
-/// A simulated camera measured in memory: scene in, characterization and truth out, the whole way of the program but for
-/// its file formats.
+/// A simulated camera measured in memory: scene in, characterization and truth out, the whole way of the
+/// program but for its file formats.
 
 #include <algorithm>
 #include <cmath>
@@ -45,13 +45,15 @@ inline Measurement measure_scene(const Scene& scene, int threads = 2) {
   }
   const Geometry geometry = make_geometry({scene.width, scene.height, PixelType::u16}, rects);
   input.series.resize(scene.series.size());
-  for (std::size_t s = 0; s < scene.series.size(); ++s) input.series[s].conditions = scene.series[s].conditions;
+  for (std::size_t s = 0; s < scene.series.size(); ++s)
+    input.series[s].conditions = scene.series[s].conditions;
   for (const bool flats : {false, true})
     for (std::size_t s = 0; s < scene.series.size(); ++s) {
       const Conditions& conditions = scene.series[s].conditions;
       if ((conditions.kind == SeriesKind::flat) != flats) continue;
       std::vector<std::vector<std::uint16_t>> frames;
-      for (int f = 0; f < scene.series[s].frames; ++f) frames.push_back(expose(sensor, static_cast<int>(s), f));
+      for (int f = 0; f < scene.series[s].frames; ++f)
+        frames.push_back(expose(sensor, static_cast<int>(s), f));
       const RawFrames<std::uint16_t> raw(scene.width, scene.height, std::move(frames));
       AccumulateOptions options;
       options.threads = threads;
@@ -61,7 +63,9 @@ inline Measurement measure_scene(const Scene& scene, int threads = 2) {
         std::optional<double> dark;
         if (flats) {
           const SeriesWeights weights = match_dark(input, r, conditions).mean;
-          dark = std::accumulate(weights.begin(), weights.end(), 0.0, [&](double sum, const auto& d) { return sum + d.second * input.series[d.first].regions[r].mean; });
+          dark = std::accumulate(weights.begin(), weights.end(), 0.0, [&](double sum, const auto& d) {
+            return sum + d.second * input.series[d.first].regions[r].mean;
+          });
         }
         input.series[s].regions.push_back(summarize(sums->regions[r], dark));
       }
@@ -72,7 +76,9 @@ inline Measurement measure_scene(const Scene& scene, int threads = 2) {
   return out;
 }
 
-inline const Quantity& quantity(const Characterization& result, const std::string& name, const std::string& region = "whole") {
+inline const Quantity& quantity(const Characterization& result,
+                                const std::string& name,
+                                const std::string& region = "whole") {
   static const Quantity kNone{};
   const auto found = std::find_if(result.quantities.begin(), result.quantities.end(),
                                   [&](const Quantity& q) { return q.name == name && q.region == region; });
@@ -82,8 +88,8 @@ inline const Quantity& quantity(const Characterization& result, const std::strin
 /// (value - truth) / standard uncertainty, over many cameras.
 struct Pulls {
   std::vector<double> values;
-  int inside = 0;    ///< 95 % intervals that held the truth
-  int missing = 0;   ///< without a value
+  int inside = 0;   ///< 95 % intervals that held the truth
+  int missing = 0;  ///< without a value
 
   void add(const Quantity& q, double truth) {
     if (!q.value || !q.standard_uncertainty || !(*q.standard_uncertainty > 0)) {
@@ -93,7 +99,9 @@ struct Pulls {
     values.push_back((*q.value - truth) / *q.standard_uncertainty);
     if (*q.low95 <= truth && truth <= *q.high95) ++inside;
   }
-  double mean() const { return std::accumulate(values.begin(), values.end(), 0.0) / static_cast<double>(values.size()); }
+  double mean() const {
+    return std::accumulate(values.begin(), values.end(), 0.0) / static_cast<double>(values.size());
+  }
   double spread() const {
     double squares = 0;
     for (const double v : values) squares += (v - mean()) * (v - mean());

@@ -11,7 +11,9 @@ using namespace evenfield::test;
 
 TEST_CASE("clean sessions of random cameras raise nothing above info, and their numbers are right") {
   boost::random::mt19937_64 random(77);
-  const auto uniform = [&](double low, double high) { return boost::random::uniform_real_distribution<double>(low, high)(random); };
+  const auto uniform = [&](double low, double high) {
+    return boost::random::uniform_real_distribution<double>(low, high)(random);
+  };
   Pulls gain;
   Pulls noise;
   for (int k = 0; k < 60; ++k) {

@@ -30,7 +30,8 @@ Scene small_camera(std::uint64_t seed) {
 
 /// Levels at these signals [e-].
 void add_levels(Scene& scene, const std::vector<double>& electrons, int frames) {
-  for (const double e : electrons) add_series(scene, SeriesKind::flat, e / scene.light.electrons_per_s, frames);
+  for (const double e : electrons)
+    add_series(scene, SeriesKind::flat, e / scene.light.electrons_per_s, frames);
 }
 
 std::vector<double> steps(double first, double step, int count) {
@@ -39,9 +40,13 @@ std::vector<double> steps(double first, double step, int count) {
   return out;
 }
 
-/// Bounds that a right program misses less than once in 10 000 runs: the spread of n pulls has the relative standard
-/// deviation 1/sqrt(2n), their mean 1/sqrt(n); 4 of them each, and the share inside 0.95 likewise (binomial).
-void check_pulls(const std::string& name, const Pulls& pulls, double spread_low = 1.0, double spread_high = 1.0) {
+/// Bounds that a right program misses less than once in 10 000 runs: the spread of n pulls has the relative
+/// standard deviation 1/sqrt(2n), their mean 1/sqrt(n); 4 of them each, and the share inside 0.95 likewise
+/// (binomial).
+void check_pulls(const std::string& name,
+                 const Pulls& pulls,
+                 double spread_low = 1.0,
+                 double spread_high = 1.0) {
   INFO(name);
   CHECK(pulls.missing == 0);
   const double n = static_cast<double>(pulls.values.size());
@@ -54,12 +59,13 @@ void check_pulls(const std::string& name, const Pulls& pulls, double spread_low 
 
 }  // namespace
 
-TEST_CASE("thirty levels of two frames and sixteen bias frames: gain and read noise as sharp as they can be") {
+TEST_CASE(
+    "thirty levels of two frames and sixteen bias frames: gain and read noise as sharp as they can be") {
   for (const std::uint64_t seed : {1, 2, 3}) {
     Scene scene = small_camera(seed);
     add_series(scene, SeriesKind::bias, 0, 16);
-    // 29 levels below 70 % of the range (8685 e-) and one past saturation. The bound of Cramer and Rao is then
-    // sqrt(2 / (20480 x 29)) = 0.184 % for the gain and 0.23 % for the read noise.
+    // 29 levels below 70 % of the range (8685 e-) and one past saturation. The bound of Cramer and Rao is
+    // then sqrt(2 / (20480 x 29)) = 0.184 % for the gain and 0.23 % for the read noise.
     add_levels(scene, steps(200, 200, 29), 2);
     add_levels(scene, {9800}, 2);
     const Measurement m = measure_scene(scene);
@@ -67,13 +73,16 @@ TEST_CASE("thirty levels of two frames and sixteen bias frames: gain and read no
     const Quantity& noise = quantity(m.result, "read_noise_e");
     REQUIRE(gain.value);
     REQUIRE(noise.value);
-    INFO(*gain.value, " +- ", *gain.standard_uncertainty, "; ", *noise.value, " +- ", *noise.standard_uncertainty);
+    INFO(*gain.value, " +- ", *gain.standard_uncertainty, "; ", *noise.value, " +- ",
+         *noise.standard_uncertainty);
     CHECK(std::abs(*gain.value - m.truth[0].conversion_gain_dn_per_e) < 3.5 * *gain.standard_uncertainty);
     CHECK(std::abs(*noise.value - m.truth[0].read_noise_e) < 3.5 * *noise.standard_uncertainty);
     CHECK(*gain.standard_uncertainty / *gain.value < 0.0020);
     CHECK(*noise.standard_uncertainty / *noise.value < 0.0026);
-    CHECK(quantity(m.result, "conversion_gain_e_per_dn").value == doctest::Approx(1 / *gain.value).epsilon(1e-12));
-    for (const Finding& finding : m.result.findings) CHECK_MESSAGE(finding.severity == Severity::info, finding.code, ": ", finding.message);
+    CHECK(quantity(m.result, "conversion_gain_e_per_dn").value ==
+          doctest::Approx(1 / *gain.value).epsilon(1e-12));
+    for (const Finding& finding : m.result.findings)
+      CHECK_MESSAGE(finding.severity == Severity::info, finding.code, ": ", finding.message);
   }
 }
 
@@ -93,7 +102,9 @@ TEST_CASE("pulls of every quantity have mean 0 and spread 1 and intervals hold t
     add_levels(scene, {400, 1500, 3000, 4300, 5500, 9800}, 4);
     const Measurement m = measure_scene(scene);
     const RegionTruth& t = m.truth[0];
-    const auto add = [&](const char* name, double truth) { pulls[name].add(quantity(m.result, name), truth); };
+    const auto add = [&](const char* name, double truth) {
+      pulls[name].add(quantity(m.result, name), truth);
+    };
     add("conversion_gain_dn_per_e", t.conversion_gain_dn_per_e);
     add("conversion_gain_e_per_dn", 1 / t.conversion_gain_dn_per_e);
     add("conversion_gain_origin_line_dn_per_e", t.conversion_gain_dn_per_e);
@@ -123,7 +134,9 @@ TEST_CASE("two per cent lamp drift over strong vignetting with hits leaves gain 
     const Measurement m = measure_scene(scene);
     gain.add(quantity(m.result, "conversion_gain_dn_per_e"), m.truth[0].conversion_gain_dn_per_e);
     noise.add(quantity(m.result, "read_noise_e"), m.truth[0].read_noise_e);
-    bias += *quantity(m.result, "conversion_gain_dn_per_e").value / m.truth[0].conversion_gain_dn_per_e / kCameras - 1.0 / kCameras;
+    bias += *quantity(m.result, "conversion_gain_dn_per_e").value / m.truth[0].conversion_gain_dn_per_e /
+                kCameras -
+            1.0 / kCameras;
   }
   INFO("mean relative deviation of the gain ", bias);
   CHECK(std::abs(bias) < 0.002);
@@ -144,7 +157,9 @@ TEST_CASE("one light level gives a two-point gain and says what is lost") {
   CHECK(quantity(m.result, "linearity_error_percent").note.find("three levels") != std::string::npos);
   CHECK(!quantity(m.result, "saturation_capacity_e").value);
   CHECK(quantity(m.result, "saturation_capacity_e").low95 == doctest::Approx(4000).epsilon(0.05));
-  CHECK(std::any_of(m.result.findings.begin(), m.result.findings.end(), [](const Finding& f) { return f.code == "too-few-levels" && f.severity == Severity::caution; }));
+  CHECK(std::any_of(m.result.findings.begin(), m.result.findings.end(), [](const Finding& f) {
+    return f.code == "too-few-levels" && f.severity == Severity::caution;
+  }));
 }
 
 TEST_CASE("row noise that all pixels of a row share widens the uncertainty as it should") {
@@ -176,8 +191,11 @@ TEST_CASE("two amplifiers are told apart, and saturation is found per block unde
     CHECK(std::abs(*gain.value - t.conversion_gain_dn_per_e) < 4 * *gain.standard_uncertainty);
     CHECK(std::abs(*noise.value - t.read_noise_e) < 4 * *noise.standard_uncertainty);
     REQUIRE(well.value);
-    // 0.2 % of the pixels are at the top code 2.9 standard deviations below the level where the mean pixel would be.
-    const double electrons = t.saturation_capacity_e - 2.878 * std::sqrt(t.saturation_capacity_e * (1 + 0.0001 * t.saturation_capacity_e));
+    // 0.2 % of the pixels are at the top code 2.9 standard deviations below the level where the mean pixel
+    // would be.
+    const double electrons =
+        t.saturation_capacity_e -
+        2.878 * std::sqrt(t.saturation_capacity_e * (1 + 0.0001 * t.saturation_capacity_e));
     INFO(t.name, " ", *well.value, " expected ", electrons);
     CHECK(*well.value == doctest::Approx(electrons).epsilon(0.01));
   }
