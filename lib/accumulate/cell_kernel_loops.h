@@ -126,16 +126,16 @@ void sums_and_gram(const CellInput& cell, double magnitude, const Workspace<C>& 
   constexpr bool kIsWhole = std::is_same_v<C, std::int16_t>;
   for (int f = 0; f < cell.frames; ++f) {
     const C* row = work.centred[static_cast<std::size_t>(f)].data();
-    double total = 0;
-    for (int y = 0; y < cell.height; ++y, row += cell.width) {
-      double sum = 0;
-      if constexpr (kIsWhole)
-        sum = whole_sum(row, cell.width);
-      else
-        sum = real_sum(row, cell.width);
-      out.row_sums[static_cast<std::size_t>(f * kCellRows + y)] = sum;
-      total += sum;
+    double* sums = out.row_sums.data() + f * kCellRows;
+    if constexpr (kIsWhole) {
+      std::int32_t whole[kCellRows];
+      whole_row_sums(row, cell.width, cell.height, magnitude, whole);
+      for (int y = 0; y < cell.height; ++y) sums[y] = whole[y];
+    } else {
+      for (int y = 0; y < cell.height; ++y, row += cell.width) sums[y] = real_sum(row, cell.width);
     }
+    double total = 0;
+    for (int y = 0; y < cell.height; ++y) total += sums[y];
     out.sums[static_cast<std::size_t>(f)] = total;
   }
   if constexpr (kIsWhole) {

@@ -96,19 +96,43 @@ inline std::int64_t whole_count(const Workspace<std::int16_t>& work,
   return total;
 }
 
-inline std::int32_t whole_sum(const std::int16_t* row, int width) {
-  const int vectors = width / kLane * kLane;
-  std::int32_t total = 0;
-  if (vectors > 0) {
-    const __m256i ones = _mm256_set1_epi16(1);
-    __m256i sum = _mm256_setzero_si256();
-    for (int x = 0; x < vectors; x += kLane)
-      sum = _mm256_add_epi32(
-          sum, _mm256_madd_epi16(_mm256_loadu_si256(reinterpret_cast<const __m256i*>(row + x)), ones));
-    total = static_cast<std::int32_t>(sum_of_32(sum));
+/// A row of whole vectors, summed into eight lanes of 32 bits. `narrow`: eight vectors fit 16 bit lanes.
+inline __m256i row_lanes(const std::int16_t* row, int width, bool narrow) {
+  const __m256i ones = _mm256_set1_epi16(1);
+  const auto vector = [row](int x) { return _mm256_loadu_si256(reinterpret_cast<const __m256i*>(row + x)); };
+  if (narrow) {
+    __m256i sum = vector(0);
+    for (int x = kLane; x < width; x += kLane) sum = _mm256_add_epi16(sum, vector(x));
+    return _mm256_madd_epi16(sum, ones);
   }
-  for (int x = vectors; x < width; ++x) total += row[x];
-  return total;
+  __m256i sum = _mm256_madd_epi16(vector(0), ones);
+  for (int x = kLane; x < width; x += kLane) sum = _mm256_add_epi32(sum, _mm256_madd_epi16(vector(x), ones));
+  return sum;
+}
+
+inline void whole_row_sums(
+    const std::int16_t* d, int width, int height, double magnitude, std::int32_t* sums) {
+  int y = 0;
+  if (width % kLane == 0) {
+    const bool narrow = magnitude * (width / kLane) <= 32767;
+    constexpr int kTogether = 8;  // eight rows end in the eight lanes of one vector
+    for (; y + kTogether <= height; y += kTogether, d += kTogether * width) {
+      __m256i lanes[kTogether];
+      for (int k = 0; k < kTogether; ++k) lanes[k] = row_lanes(d + k * width, width, narrow);
+      const __m256i first =
+          _mm256_hadd_epi32(_mm256_hadd_epi32(lanes[0], lanes[1]), _mm256_hadd_epi32(lanes[2], lanes[3]));
+      const __m256i last =
+          _mm256_hadd_epi32(_mm256_hadd_epi32(lanes[4], lanes[5]), _mm256_hadd_epi32(lanes[6], lanes[7]));
+      const __m256i lower = _mm256_permute2x128_si256(first, last, 0x20);
+      const __m256i upper = _mm256_permute2x128_si256(first, last, 0x31);
+      _mm256_storeu_si256(reinterpret_cast<__m256i*>(sums + y), _mm256_add_epi32(lower, upper));
+    }
+  }
+  for (; y < height; ++y, d += width) {
+    std::int32_t total = 0;
+    for (int x = 0; x < width; ++x) total += d[x];
+    sums[y] = total;
+  }
 }
 
 /// Frames [i, i + kRows) against frames [j, j + kColumns): each product of a block of pairs has a register of

@@ -53,11 +53,13 @@ inline std::int64_t whole_count(const Workspace<std::int16_t>& work,
   return total;
 }
 
-/// Sum of a row, at most 128 terms.
-inline std::int32_t whole_sum(const std::int16_t* row, int width) {
-  std::int32_t total = 0;
-  for (int x = 0; x < width; ++x) total += row[x];
-  return total;
+/// Sums of the rows of one frame, at most 128 terms each.
+inline void whole_row_sums(const std::int16_t* d, int width, int height, double, std::int32_t* sums) {
+  for (int y = 0; y < height; ++y, d += width) {
+    std::int32_t total = 0;
+    for (int x = 0; x < width; ++x) total += d[x];
+    sums[y] = total;
+  }
 }
 
 /// Products of all pairs of frames, summed over `pixels` (padded); 32 bit sums run while they cannot

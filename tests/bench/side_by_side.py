@@ -25,7 +25,7 @@ HERE = pathlib.Path(__file__).resolve().parent
 CONTAINERS = {"tiff": "TIFF", "fits": "FITS", "deflate": "deflate TIFF", "rice": "Rice FITS"}
 # Largest ratios that are asked for, on two cores at the full size.
 AT_MOST = {("tiff", "cat"): "2.2", ("even", "cat"): "1.8", ("fits", "cat"): "2.3", ("tiff", "NumPy"): "1/12",
-           ("tiff", "OpenCV, float"): "1/12", ("tiff", "OpenCV, double"): "1/12",
+           ("tiff", "OpenCV-float"): "1/12", ("tiff", "OpenCV-double"): "1/12",
            ("deflate", "decoder"): "0.65", ("rice", "decoder"): "0.60"}
 
 
@@ -87,7 +87,7 @@ class Bench:
         commands["NumPy"] = ["/usr/bin/python3", "-B", HERE / "numpy_accumulate.py", *files]
         if kind in ("tiff", "deflate"):
             for width in ("float", "double"):
-                commands[f"OpenCV, {width}"] = [self.benches / "bench_opencv_accumulate", width, *files]
+                commands[f"OpenCV-{width}"] = [self.benches / "bench_opencv_accumulate", width, *files]
         if kind in ("deflate", "rice"):
             commands["decoder"] = [self.benches / f"bench_decode_{'tiff' if kind == 'deflate' else 'fits'}", *files]
         return {name: command for name, command in commands.items() if name not in self.arguments.without}
@@ -122,7 +122,7 @@ class Bench:
         """The programs timed have to have read the same pixels: their means agree with those of series.csv."""
         with open(self.scratch / "result" / "series.csv", newline="", encoding="utf-8") as table:
             wanted = [float(row["mean_dn"]) for row in csv.DictReader(table)]
-        for name in ("NumPy", "OpenCV, float", "OpenCV, double"):
+        for name in ("NumPy", "OpenCV-float", "OpenCV-double"):
             if not (self.scratch / name).exists():
                 continue
             found = [float(line.split()[0]) for line in (self.scratch / name).read_text().splitlines()]
@@ -167,8 +167,8 @@ def speed_table(bench):
         peaks.append((label, peak_kb))
         for name, ours, theirs in comparisons:
             shown = {"decoder": "libtiff alone, 1 thread" if kind == "deflate" else "CFITSIO alone, 1 thread",
-                     "cat": "`cat` of the files", "NumPy": "NumPy, frame by frame", "OpenCV, float": "OpenCV over libtiff, float sums",
-                     "OpenCV, double": "OpenCV over libtiff, double sums"}[name]
+                     "cat": "`cat` of the files", "NumPy": "NumPy, frame by frame", "OpenCV-float": "OpenCV over libtiff, float sums",
+                     "OpenCV-double": "OpenCV over libtiff, double sums"}[name]
             ratios = [ours[turn] / theirs[turn] for turn in theirs]
             rows.append(f"| {label} | {shown} | {of_rounds(ratios, 2)} | {AT_MOST.get((kind, name), '')} | "
                         f"{statistics.median(ours.values()):.2f} s | {statistics.median(theirs.values()):.2f} s |")
@@ -209,8 +209,9 @@ def main():
     parser.add_argument("--pairs", type=int, default=11, metavar="N", help="rounds")
     parser.add_argument("--slow-pairs", type=int, metavar="N", help="rounds that run more than cat and evenfield (default: all)")
     parser.add_argument("--containers", default=",".join(CONTAINERS), metavar="NAME,...", help="some of the default")
-    parser.add_argument("--without", action="append", default=[], choices=["NumPy", "OpenCV, float", "OpenCV, double", "decoder"],
-                        help="leave one of the slow ones out; may be repeated")
+    parser.add_argument("--without", action="append", default=[], metavar="NAME",
+                        choices=["NumPy", "OpenCV-float", "OpenCV-double", "decoder"],
+                        help="leave one out: NumPy, OpenCV-float, OpenCV-double, decoder; may be repeated")
     parser.add_argument("--keep", type=pathlib.Path, metavar="DIR", help="keep the frames there, and use those that are there")
     parser.add_argument("--program", type=pathlib.Path, help="another evenfield than that of the build")
     parser.add_argument("--build", type=pathlib.Path, default=ROOT / "build" / "release", help=argparse.SUPPRESS)
@@ -218,6 +219,8 @@ def main():
     arguments.containers = arguments.containers.split(",")
     if not set(arguments.containers) <= set(CONTAINERS):
         parser.error(f"--containers: found {','.join(arguments.containers)}, expected some of {','.join(CONTAINERS)}")
+    if not re.fullmatch(r"[1-9]\d{1,5}x[1-9]\d{1,5}", arguments.size):
+        parser.error(f"--size: found {arguments.size}, expected WIDTHxHEIGHT in pixels")
     if arguments.quick:
         arguments.size, arguments.levels, arguments.pairs = "512x512", 8, 3
     arguments.slow_pairs = arguments.pairs if arguments.slow_pairs is None else arguments.slow_pairs
@@ -230,7 +233,8 @@ def main():
         folder = arguments.keep or pathlib.Path(scratch)
         folder.mkdir(parents=True, exist_ok=True)
         need = session_bytes * (len(arguments.containers) + 2)
-        free = shutil.disk_usage(folder).free
+        there = sum(path.stat().st_size for path in folder.rglob("*") if path.is_file())  # replaced or used again
+        free = shutil.disk_usage(folder).free + there
         if free < need:
             raise SystemExit(f"bench: {folder}: found {free / 1e9:.0f} GB free, expected {need / 1e9:.0f} GB for the frames")
         bench = Bench(arguments, folder)
