@@ -1,7 +1,9 @@
 #include "pipeline.h"
 
+#include <atomic>
 #include <chrono>
 #include <ctime>
+#include <future>
 #include <numeric>
 
 #include "accumulate/accumulate.h"
@@ -9,6 +11,7 @@
 #include "analyse/dark_match.h"
 #include "base/interrupt.h"
 #include "ingest/open_stack.h"
+#include "ingest/read_ahead.h"
 #include "ingest/session_reader.h"
 
 namespace evenfield {
@@ -29,7 +32,8 @@ AnalysisInput begin_input(const Session& session) {
   AnalysisInput input;
   input.bit_depth = session.camera.bit_depth;
   input.floating = is_floating(session.shape.type);
-  if (session.light) input.level_relative_uncertainty = session.light->level_relative_standard_uncertainty.value_or(0.0);
+  if (session.light)
+    input.level_relative_uncertainty = session.light->level_relative_standard_uncertainty.value_or(0.0);
   for (const SessionRegion& region : session.regions) input.regions.push_back({region.name, region.rect});
   for (const Series& series : session.series) {
     SeriesInput& out = input.series.emplace_back();
@@ -51,14 +55,17 @@ std::vector<std::size_t> darks_first(const Session& session) {
   return order;
 }
 
-Status read_series(const OpenedSession& opened, const Geometry& geometry, std::size_t s, int threads, AnalysisInput& input) {
+Status read_series(const OpenedSession& opened,
+                   const FrameStack& stack,
+                   const Geometry& geometry,
+                   std::size_t s,
+                   int threads,
+                   AnalysisInput& input) {
   const Series& series = opened.session.series[s];
-  const auto stack = open_stack(opened.session, series, opened.frame_files, threads);
-  if (!stack) return stack.error();
   AccumulateOptions options;
   options.threads = threads;
   if (series.conditions.kind != SeriesKind::flat) options.fewest_frames_for_hits = kDarkFramesForHits;
-  auto sums = accumulate(*stack, geometry, options);
+  auto sums = accumulate(stack, geometry, options);
   if (!sums) return sums.error();
   SeriesInput& out = input.series[s];
   for (std::size_t r = 0; r < input.regions.size(); ++r) {
@@ -77,39 +84,89 @@ Status read_series(const OpenedSession& opened, const Geometry& geometry, std::s
   return Done{};
 }
 
+/// Tells work that goes on beside that nobody waits for it any more.
+class GiveUp {
+ public:
+  explicit GiveUp(std::atomic<bool>& flag) : flag_(flag) {}
+  ~GiveUp() { flag_ = true; }
+  GiveUp(const GiveUp&) = delete;
+  GiveUp& operator=(const GiveUp&) = delete;
+
+ private:
+  std::atomic<bool>& flag_;
+};
+
+Status read_all(const OpenedSession& opened,
+                const Geometry& geometry,
+                int threads,
+                Progress& progress,
+                AnalysisInput& input) {
+  const std::vector<std::size_t> order = darks_first(opened.session);
+  std::uint64_t work = 0;
+  for (const std::size_t s : order)
+    work += reading_work(opened.session, opened.session.series[s], opened.frame_files);
+  progress.work = work;
+  progress.series = static_cast<int>(order.size());
+  progress.stage = "reading frames";
+  const ReadAhead read_ahead(opened.session, opened.frame_files, order, progress);
+  ScratchFiles scratch;
+  std::atomic<bool> give_up = false;
+  const auto open = [&](std::size_t turn) {
+    const Series& series = opened.session.series[order[turn]];
+    return open_stack(opened.session, series, opened.frame_files, threads, {&progress, &scratch, &give_up});
+  };
+  // The next series is opened, which decodes it if need be, while the present one is measured: no core waits
+  // for the last frame of either.
+  std::future<Result<FrameStack>> next = std::async(std::launch::async, open, 0);
+  const GiveUp on_return(give_up);  // after `next`, whose end waits for the work
+  for (std::size_t turn = 0; turn < order.size(); ++turn) {
+    const Result<FrameStack> stack = next.get();
+    if (!stack) return stack.error();
+    if (interrupt_requested()) return interrupted();
+    if (turn + 1 < order.size()) next = std::async(std::launch::async, open, turn + 1);
+    const Status read = read_series(opened, *stack, geometry, order[turn], threads, input);
+    if (!read) return read;
+    progress.series_done = static_cast<int>(turn) + 1;
+  }
+  return Done{};
+}
+
 }  // namespace
 
 const char* program_version() { return EVENFIELD_VERSION; }
 
 Result<Characterization> measure(const std::filesystem::path& session_file, const MeasureOptions& options) {
+  Progress unseen;
+  Progress& progress = options.progress != nullptr ? *options.progress : unseen;
+  progress.stage = "reading headers";
   const auto opened = read_session(session_file, options.threads, options.camera_file);
   if (!opened) return opened.error();
   const Session& session = opened->session;
   if (session.analysis.gain_model == "curved")
-    return Error{Errc::input, {session_file, {}, {}, "analysis.gain_model"},
+    return Error{Errc::input,
+                 {session_file, {}, {}, "analysis.gain_model"},
                  "found \"curved\", expected auto or line: this version fits no curved model"};
   AnalysisInput input = begin_input(session);
   std::vector<Rect> rects;
   for (const Region& region : input.regions) rects.push_back(region.rect);
   const Geometry geometry = make_geometry(session.shape, rects);
 
-  int done = 0;
-  for (const std::size_t s : darks_first(session)) {
-    if (interrupt_requested()) return interrupted();
-    if (options.progress) options.progress(done++, static_cast<int>(session.series.size()));
-    if (const Status read = read_series(*opened, geometry, s, options.threads, input); !read) return read.error();
-  }
-  if (options.progress) options.progress(done, done);
-
+  if (const Status read = read_all(*opened, geometry, options.threads, progress, input); !read)
+    return read.error();
+  progress.work = 0;
+  progress.series = 0;
+  progress.stage = "analysing";
   Characterization out = analyse(input);
   for (const SessionRegion& region : session.regions)
     for (Quantity& q : out.quantities)
       if (region.overscan && q.region == region.name && q.name == "dark_offset_dn")
-        q.note += std::string(q.note.empty() ? "" : "; ") + "the region's overscan is not used by this version";
+        q.note +=
+            std::string(q.note.empty() ? "" : "; ") + "the region's overscan is not used by this version";
   out.program_version = program_version();
   out.created = now();
   out.acquired = session.acquired;
-  out.session = {session_file.filename().string(), session.camera_given, session.light_given, session.analysis_given};
+  out.session = {session_file.filename().string(), session.camera_given, session.light_given,
+                 session.analysis_given};
   for (std::size_t s = 0; s < session.series.size(); ++s)
     for (std::size_t f = 0; f < session.series[s].frames.size(); ++f) {
       const FrameReference& frame = session.series[s].frames[f];

@@ -2,10 +2,10 @@
 /// The whole run: frames in, characterization out.
 
 #include <filesystem>
-#include <functional>
 #include <optional>
 
 #include "base/error.h"
+#include "base/progress.h"
 #include "result/characterization.h"
 
 namespace evenfield {
@@ -16,12 +16,11 @@ const char* program_version();
 struct MeasureOptions {
   int threads = 1;
   std::optional<std::filesystem::path> camera_file;  ///< its [camera] and [light] go over the session's
-  /// Told before each series: how many are done, of how many.
-  std::function<void(int done, int of)> progress;
+  Progress* progress = nullptr;                      ///< kept up to date, if given
 };
 
-/// Measures the session that `session_file` describes. Memory does not grow with the number of series. Errors: those of
-/// read_session, open_stack and accumulate; interrupted.
+/// Measures the session that `session_file` describes. Memory does not grow with the number of series.
+/// Errors: those of read_session, open_stack and accumulate; interrupted.
 Result<Characterization> measure(const std::filesystem::path& session_file, const MeasureOptions& options);
 
 }  // namespace evenfield

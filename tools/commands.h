@@ -1,12 +1,11 @@
 #pragma once
 /// The sub-commands, and what they share. argv[0] is the sub-command's name; the value is the exit status.
 
+#include <boost/program_options/options_description.hpp>
+#include <boost/program_options/variables_map.hpp>
 #include <optional>
 #include <string>
 #include <vector>
-
-#include <boost/program_options/options_description.hpp>
-#include <boost/program_options/variables_map.hpp>
 
 #include "base/error.h"
 
@@ -24,15 +23,21 @@ struct CommonOptions {
 /// --threads, --quiet, --json, --progress, --help, --version.
 void add_common(boost::program_options::options_description& options);
 
-/// Parses the command line of a sub-command. A value, or an exit status after the message or help was printed.
+/// Parses the command line of a sub-command. A value, or an exit status after the message or help was
+/// printed.
 struct Parsed {
   std::optional<int> exit;
   boost::program_options::variables_map values;
   CommonOptions common;
 };
-/// `shown` are the options of the help; what stands without an option's name goes into `arguments`, a list of strings.
-Parsed parse(int argc, char** argv, const boost::program_options::options_description& shown, const std::string& arguments,
-             const std::string& usage, const std::string& description);
+/// `shown` are the options of the help; what stands without an option's name goes into `arguments`, a list of
+/// strings.
+Parsed parse(int argc,
+             char** argv,
+             const boost::program_options::options_description& shown,
+             const std::string& arguments,
+             const std::string& usage,
+             const std::string& description);
 
 /// 0, or that of an output error, with its message, if standard output could not be written.
 int output_status();
@@ -47,6 +52,7 @@ class ProgressLine {
   ~ProgressLine() { clear(); }
   ProgressLine(const ProgressLine&) = delete;
   ProgressLine& operator=(const ProgressLine&) = delete;
+  bool shown() const { return shown_; }
   void show(const std::string& text);
   void clear();
 

@@ -26,13 +26,15 @@ void print_summary(const Characterization& result, std::ostream& out) {
       if (q.region != region.name || info == nullptr) continue;
       const MeasuredText number = measured_text(q.value, q.standard_uncertainty, q.low95, q.high95);
       const std::string power = number.power.empty() ? "" : "e" + number.power;
-      const std::string text = q.value ? number.value + power + " +- " + number.uncertainty + power + " " + std::string(info->unit)
-                                       : "not determined: " + q.note;
+      const std::string text =
+          q.value ? number.value + power + " +- " + number.uncertainty + power + " " + std::string(info->unit)
+                  : "not determined: " + q.note;
       out << "  " << q.name << std::string(q.name.size() < 38 ? 38 - q.name.size() : 1, ' ') << text << "\n";
     }
   }
   for (const Finding& finding : result.findings)
-    if (finding.severity != Severity::info) out << name_of(finding.severity) << " " << finding.code << ": " << finding.message << "\n";
+    if (finding.severity != Severity::info)
+      out << name_of(finding.severity) << " " << finding.code << ": " << finding.message << "\n";
 }
 
 std::vector<std::string> split(const std::string& text) {
@@ -46,21 +48,25 @@ std::vector<std::string> split(const std::string& text) {
 
 int measure_command(int argc, char** argv) {
   po::options_description options("Options", 100);
-  options.add_options()
-      ("out", po::value<std::string>()->value_name("DIR"), "folder for the results; made, or replaced if it holds results of ours")
-      ("camera", po::value<std::string>()->value_name("FILE.toml"), "a file with [camera] and [light] that go over the session's")
-      ("plots", po::value<std::string>()->value_name("none|all|NAME,...")->default_value("all"), "which pictures to draw");
+  options.add_options()("out", po::value<std::string>()->value_name("DIR"),
+                        "folder for the results; made, or replaced if it holds results of ours")(
+      "camera", po::value<std::string>()->value_name("FILE.toml"),
+      "a file with [camera] and [light] that go over the session's")(
+      "plots", po::value<std::string>()->value_name("none|all|NAME,...")->default_value("all"),
+      "which pictures to draw");
   add_common(options);
-  const Parsed parsed = parse(argc, argv, options, "session", "evenfield measure SESSION.toml --out DIR [options]",
-                              "Measures a camera from the flat and dark frames that the session file names, and writes\n"
-                              "result.json, CSV tables, pictures and report.html into DIR.");
+  const Parsed parsed =
+      parse(argc, argv, options, "session", "evenfield measure SESSION.toml --out DIR [options]",
+            "Measures a camera from the flat and dark frames that the session file names, and writes\n"
+            "result.json, CSV tables, pictures and report.html into DIR.");
   if (parsed.exit) return *parsed.exit;
   const auto refuse = [&](const std::string& what) {
     return report_error({Errc::usage, {}, "measure: " + what + "; see evenfield measure --help"});
   };
   if (!parsed.values.contains("session")) return refuse("found no session file, expected one");
   const auto sessions = parsed.values["session"].as<std::vector<std::string>>();
-  if (sessions.size() > 1) return refuse("found " + std::to_string(sessions.size()) + " session files, expected one");
+  if (sessions.size() > 1)
+    return refuse("found " + std::to_string(sessions.size()) + " session files, expected one");
   if (!parsed.values.contains("out") || parsed.values["out"].as<std::string>().empty())
     return refuse("found no --out, expected the folder for the results");
   const auto plots = plot_selection(split(parsed.values["plots"].as<std::string>()));
@@ -72,7 +78,8 @@ int measure_command(int argc, char** argv) {
   ProgressLine line(parsed.common.progress);
   MeasureOptions measure_options;
   measure_options.threads = parsed.common.threads;
-  if (parsed.values.contains("camera")) measure_options.camera_file = parsed.values["camera"].as<std::string>();
+  if (parsed.values.contains("camera"))
+    measure_options.camera_file = parsed.values["camera"].as<std::string>();
   Progress progress;
   measure_options.progress = &progress;
   std::optional<ProgressWatch> watch(std::in_place, line, progress);
@@ -91,14 +98,18 @@ int measure_command(int argc, char** argv) {
   if (!written) return report_error(written.error());
   if (interrupt_requested()) return report_error(interrupted());
   if (const Status committed = folder->commit(); !committed) return report_error(committed.error());
-  if (!written->message.empty() && !parsed.common.quiet) std::cerr << "evenfield: " << escape_control(written->message) << "\n";
+  if (!written->message.empty() && !parsed.common.quiet)
+    std::cerr << "evenfield: " << escape_control(written->message) << "\n";
   if (parsed.common.json) {
     const auto json = to_json(*result);
     if (!json) return report_error(json.error());
     std::cout << *json;
   } else if (!parsed.common.quiet) {
     print_summary(*result, std::cout);
-    std::cout << "report: " << escape_control((std::filesystem::path(parsed.values["out"].as<std::string>()) / "report.html").string()) << "\n";
+    std::cout << "report: "
+              << escape_control(
+                     (std::filesystem::path(parsed.values["out"].as<std::string>()) / "report.html").string())
+              << "\n";
   }
   return output_status();
 }

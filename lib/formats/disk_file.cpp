@@ -2,9 +2,13 @@
 
 #include <fcntl.h>
 #include <sys/stat.h>
+#include <sys/sysmacros.h>
+#include <sys/uio.h>
 #include <unistd.h>
 
+#include <algorithm>
 #include <cerrno>
+#include <fstream>
 #include <system_error>
 #include <utility>
 
@@ -46,6 +50,9 @@ Result<DiskFile> DiskFile::temporary() {
   if (failure) {
     return Error{Errc::output, {folder, {}, {}, {}}, "no folder for temporary files: " + failure.message()};
   }
+  if (const int nameless = ::open(folder.c_str(), O_TMPFILE | O_RDWR | O_CLOEXEC, 0600); nameless >= 0)
+    return DiskFile(nameless, folder, 0);
+  // Not every file system has files without a name.
   std::string name = (folder / "evenfield-XXXXXX").string();
   const int descriptor = ::mkostemp(name.data(), O_CLOEXEC);
   if (descriptor < 0) return system_error(Errc::output, folder, "no temporary file can be made here");
@@ -95,6 +102,28 @@ Status DiskFile::read(std::uint64_t offset, void* to, std::size_t bytes) const {
   return Done{};
 }
 
+std::optional<std::uint64_t> DiskFile::system_read_ahead() const {
+  struct stat facts {};
+  if (::fstat(descriptor_, &facts) != 0) return std::nullopt;
+  std::ifstream file("/sys/class/bdi/" + std::to_string(major(facts.st_dev)) + ":" +
+                     std::to_string(minor(facts.st_dev)) + "/read_ahead_kb");
+  std::uint64_t kilobytes = 0;
+  if (!(file >> kilobytes)) return std::nullopt;
+  return kilobytes * 1024;
+}
+
+void DiskFile::will_need(std::uint64_t offset, std::uint64_t bytes) const {
+  // Asking for what is in memory already would cost a look at each of its pages.
+  char byte = 0;
+  iovec one{&byte, 1};
+  if (::preadv2(descriptor_, &one, 1, static_cast<off_t>(offset), RWF_NOWAIT) == 1) return;
+  // Linux reads no more than one request of the device, 128 kB at least, for each call.
+  constexpr std::uint64_t kRequest = std::uint64_t{128} << 10U;
+  for (std::uint64_t done = 0; done < bytes; done += kRequest)
+    ::posix_fadvise(descriptor_, static_cast<off_t>(offset + done),
+                    static_cast<off_t>(std::min(kRequest, bytes - done)), POSIX_FADV_WILLNEED);
+}
+
 Status DiskFile::write(std::uint64_t offset, const void* from, std::size_t bytes) {
   std::size_t done = 0;
   while (done < bytes) {
@@ -104,7 +133,8 @@ Status DiskFile::write(std::uint64_t offset, const void* from, std::size_t bytes
     if (put <= 0) return system_error(Errc::output, path_, "cannot write a temporary file here");
     done += static_cast<std::size_t>(put);
   }
-  size_ = std::max(size_, offset + bytes);
+  // Nothing is stored inside the size: several threads may be here.
+  if (offset + bytes > size_) size_ = offset + bytes;
   return Done{};
 }
 

@@ -5,6 +5,7 @@
 #include <cstddef>
 #include <cstdint>
 #include <filesystem>
+#include <optional>
 #include <string>
 
 #include "base/error.h"
@@ -15,7 +16,8 @@ class DiskFile {
  public:
   /// Error (input) if `path` is absent, not a plain file, or may not be read.
   static Result<DiskFile> open(const std::filesystem::path& path);
-  /// Empty, without a name, in the folder for temporary files (TMPDIR); gone when closed. Error (output).
+  /// Empty, without a name, in the folder for temporary files (TMPDIR); gone when closed, however the program
+  /// ends. Error (output).
   static Result<DiskFile> temporary();
 
   DiskFile(DiskFile&& other) noexcept;
@@ -31,7 +33,11 @@ class DiskFile {
   Result<std::size_t> read_some(std::uint64_t offset, void* to, std::size_t bytes) const;
   /// Error (input) if fewer are there: "found N bytes, expected at least M".
   Status read(std::uint64_t offset, void* to, std::size_t bytes) const;
-  /// Error (output).
+  /// Bytes that the system reads ahead by itself on this file's device; nothing where it does not say so.
+  std::optional<std::uint64_t> system_read_ahead() const;
+  /// Asks the system to fetch these bytes soon, unless the first of them is in memory. Comes back at once.
+  void will_need(std::uint64_t offset, std::uint64_t bytes) const;
+  /// From several threads at a time only inside of size(). Error (output).
   Status write(std::uint64_t offset, const void* from, std::size_t bytes);
   /// Makes the file `bytes` long without writing: what was never written reads as zero. Error (output).
   Status extend(std::uint64_t bytes);

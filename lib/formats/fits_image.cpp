@@ -6,6 +6,7 @@
 #include <cmath>
 #include <limits>
 
+#include "base/interrupt.h"
 #include "base/text.h"
 #include "formats/acquisition_time.h"
 #include "formats/fits_tiles.h"
@@ -16,6 +17,8 @@ namespace evenfield {
 namespace {
 
 constexpr int kMaxAxes = 9;
+using AxisNumbers = std::array<long, kMaxAxes>;
+constexpr std::size_t kPieceBytes = std::size_t{16} << 20U;
 constexpr double kMaxOverhang = 1 << 24;  // pixels of a tile that is larger than its image
 
 /// Reads the header of the current part of a handle.
@@ -223,6 +226,52 @@ class ImageReader {
   FitsImage image_;
 };
 
+/// Reads a box of pixels; true if some were undefined.
+bool read_piece(fitsfile* handle,
+                PixelType pixel_type,
+                AxisNumbers& first,
+                AxisNumbers& last,
+                void* pixels,
+                int* status) {
+  AxisNumbers step{};
+  step.fill(1);
+  // A value that stands in for undefined pixels has to be given, or CFITSIO does not look for them. Of floats
+  // it is not-a-number, which is what an undefined pixel of an uncompressed image holds in any case.
+  constexpr double kNotANumber = std::numeric_limits<double>::quiet_NaN();
+  int undefined = 0;
+  const auto read = [&](int type, auto instead) {
+    fits_read_subset(handle, type, first.data(), last.data(), step.data(), &instead, pixels, &undefined,
+                     status);
+  };
+  switch (pixel_type) {
+    case PixelType::u8:
+      read(TBYTE, static_cast<unsigned char>(1));
+      break;
+    case PixelType::i8:
+      read(TSBYTE, static_cast<signed char>(1));
+      break;
+    case PixelType::u16:
+      read(TUSHORT, static_cast<unsigned short>(1));
+      break;
+    case PixelType::i16:
+      read(TSHORT, static_cast<short>(1));
+      break;
+    case PixelType::u32:
+      read(TUINT, 1U);
+      break;
+    case PixelType::i32:
+      read(TINT, 1);
+      break;
+    case PixelType::f32:
+      read(TFLOAT, static_cast<float>(kNotANumber));
+      break;
+    case PixelType::f64:
+      read(TDOUBLE, kNotANumber);
+      break;
+  }
+  return undefined != 0;
+}
+
 }  // namespace
 
 Result<FitsHandle> open_fits(const std::filesystem::path& path, const std::string& name) {
@@ -269,53 +318,34 @@ Status read_fits_plane(fitsfile* handle, const FitsImage& image, std::uint64_t p
     Status whole = check_gzip_tiles(handle, image, plane);
     if (!whole) return whole;
   }
-  std::vector<long> first(image.axes.size(), 1);
-  std::vector<long> last = image.axes;
-  std::vector<long> step(image.axes.size(), 1);
+  AxisNumbers first{};
+  AxisNumbers last{};
+  first[0] = 1;
+  last[0] = image.axes[0];
   for (std::size_t axis = 2; axis < image.axes.size(); ++axis) {
     const auto length = static_cast<std::uint64_t>(image.axes[axis]);
     first[axis] = last[axis] = static_cast<long>(plane % length) + 1;
     plane /= length;
   }
-  // A value that stands in for undefined pixels has to be given, or CFITSIO does not look for them. Of floats
-  // it is not-a-number, which is what an undefined pixel of an uncompressed image holds in any case.
-  constexpr double kNotANumber = std::numeric_limits<double>::quiet_NaN();
-  int undefined = 0;
-  const auto read = [&](int type, auto instead) {
-    fits_read_subset(handle, type, first.data(), last.data(), step.data(), &instead, pixels, &undefined,
-                     &status);
-  };
-  switch (image.shape.type) {
-    case PixelType::u8:
-      read(TBYTE, static_cast<unsigned char>(1));
-      break;
-    case PixelType::i8:
-      read(TSBYTE, static_cast<signed char>(1));
-      break;
-    case PixelType::u16:
-      read(TUSHORT, static_cast<unsigned short>(1));
-      break;
-    case PixelType::i16:
-      read(TSHORT, static_cast<short>(1));
-      break;
-    case PixelType::u32:
-      read(TUINT, 1U);
-      break;
-    case PixelType::i32:
-      read(TINT, 1);
-      break;
-    case PixelType::f32:
-      read(TFLOAT, static_cast<float>(kNotANumber));
-      break;
-    case PixelType::f64:
-      read(TDOUBLE, kNotANumber);
-      break;
+  // In pieces of whole tiles, so that a wish to stop is seen in the middle of a large frame.
+  const long height = image.axes[1];
+  const long tile_height = image.tile.empty() ? 1 : image.tile[1];
+  const std::size_t row_bytes = static_cast<std::size_t>(image.axes[0]) * bytes_per_pixel(image.shape.type);
+  const long piece_rows =
+      std::max(static_cast<long>(kPieceBytes / row_bytes) / tile_height, 1L) * tile_height;
+  bool undefined = false;
+  for (long y = 0; y < height && status == 0; y += piece_rows) {
+    if (interrupt_requested()) return interrupted();
+    first[1] = y + 1;
+    last[1] = std::min(y + piece_rows, height);
+    auto* rows = static_cast<unsigned char*>(pixels) + static_cast<std::size_t>(y) * row_bytes;
+    undefined = read_piece(handle, image.shape.type, first, last, rows, &status) || undefined;
   }
   if (status != 0) return Error{Errc::input, {}, "cannot be decoded: " + fits_words(status)};
   int bits = 0;
   fits_get_img_type(handle, &bits, &status);
   if (status != 0) return Error{Errc::input, {}, "cannot be decoded: " + fits_words(status)};
-  if (bits > 0 && undefined != 0) {
+  if (bits > 0 && undefined) {
     return Error{Errc::input, {{}, {}, {}, "BLANK"}, "found undefined pixels, expected none"};
   }
   return Done{};

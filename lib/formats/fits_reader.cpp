@@ -119,7 +119,7 @@ class FitsDecoder : public FrameDecoder {
 Result<FrameFile> inspect_fits(const std::filesystem::path& path, bool packed) {
   const auto open = open_file(path, packed, Unpack::headers);
   if (!open) return open.error();
-  FrameFile file{path, FileFormat::fits, {}, open->header};
+  FrameFile file{path, FileFormat::fits, {}, open->header, packed};
   for (const FitsImage& image : open->images) {
     for (std::uint64_t plane = 0; plane < image.planes; ++plane)
       file.pages.push_back(page_of(image, plane, packed));

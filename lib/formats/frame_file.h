@@ -50,6 +50,7 @@ struct FrameFile {
   FileFormat format = FileFormat::tiff;
   std::vector<FramePage> pages;
   FrameHeader header;
+  bool packed = false;  ///< as a whole: a decoder unpacks all of it before its first frame
 };
 
 /// Reads the headers of `path`. The format is told from the first bytes, not from the name. Errors (input)

@@ -7,6 +7,7 @@
 #include <memory>
 #include <string>
 
+#include "base/interrupt.h"
 #include "formats/frame_limits.h"
 
 namespace evenfield {
@@ -33,6 +34,7 @@ class GunzipStream {
     std::size_t done = 0;
     if (!ready_) return damaged("no memory for it");
     while (done < bytes && !ended_) {
+      if (interrupt_requested()) return interrupted();
       if (state_.avail_in == 0) {
         const auto got = file_.read_some(offset_, packed_.data(), packed_.size());
         if (!got) return got.error();

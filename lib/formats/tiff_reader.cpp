@@ -7,6 +7,7 @@
 #include <cstring>
 #include <vector>
 
+#include "base/interrupt.h"
 #include "formats/disk_file.h"
 #include "formats/frame_limits.h"
 #include "formats/raw_pixels.h"
@@ -19,6 +20,8 @@ namespace {
 
 /// Read; no memory mapping (a file that shrinks would kill the program); no pretended short strips.
 constexpr const char* kReadMode = "rmc";
+/// Bytes that decode in a few tenths of a second.
+constexpr tmsize_t kLargeStrip = tmsize_t{64} << 20U;
 constexpr std::uint64_t kDirectoryMemory = std::uint64_t{1} << 28U;
 
 Error damaged(const std::filesystem::path& path,
@@ -142,9 +145,29 @@ class TiffDecoder : public FrameDecoder {
       const auto rows = static_cast<std::size_t>(std::min(now.block_height, shape.height - y));
       const auto bytes = static_cast<tmsize_t>(rows * row_bytes);
       char* to = static_cast<char*>(pixels) + static_cast<std::size_t>(y) * row_bytes;
+      if (interrupt_requested()) return interrupted();
+      if (bytes > kLargeStrip) {
+        Status status = decode_by_rows(page, y, static_cast<int>(rows), to);
+        if (!status) return status;
+        continue;
+      }
       if (TIFFReadEncodedStrip(handle_.get(), strip, to, bytes) != bytes || !handle_.errors().empty()) {
         return damaged(file_.path, page, handle_,
                        "strip " + std::to_string(strip + 1) + " cannot be decoded");
+      }
+    }
+    return Done{};
+  }
+
+  /// A strip that takes long, row by row: slower, but a wish to stop is seen in the middle of it.
+  Status decode_by_rows(int page, int first, int rows, char* to) {
+    const auto row_bytes = static_cast<std::size_t>(TIFFScanlineSize64(handle_.get()));
+    for (int row = 0; row < rows; ++row, to += row_bytes) {
+      if (row % 64 == 0 && interrupt_requested()) return interrupted();
+      if (TIFFReadScanline(handle_.get(), to, static_cast<std::uint32_t>(first + row), 0) != 1 ||
+          !handle_.errors().empty()) {
+        return damaged(file_.path, page, handle_,
+                       "row " + std::to_string(first + row + 1) + " cannot be decoded");
       }
     }
     return Done{};
@@ -161,6 +184,7 @@ class TiffDecoder : public FrameDecoder {
     std::uint32_t tile = 0;
     for (int y = 0; y < shape.height; y += now.block_height) {
       for (int x = 0; x < shape.width; x += now.block_width, ++tile) {
+        if (interrupt_requested()) return interrupted();
         if (TIFFReadEncodedTile(handle_.get(), tile, tile_.data(), bytes) != bytes ||
             !handle_.errors().empty()) {
           return damaged(file_.path, page, handle_,
