@@ -3,8 +3,8 @@
 
 #include <iostream>
 
-// The main function of every test executable. One that ran no case has failed: a filter that matches nothing, or a
-// source left out of the build, must not look like success. Listing cases or asking for help is no run.
+// The main function of every test executable. One that ran no case has failed: a filter that matches nothing,
+// or a source left out of the build, must not look like success. Listing cases or asking for help is no run.
 namespace {
 
 bool ran_no_case = false;

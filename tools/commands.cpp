@@ -13,13 +13,11 @@ namespace evenfield {
 namespace po = boost::program_options;
 
 void add_common(po::options_description& options) {
-  options.add_options()
-      ("threads", po::value<int>()->value_name("N"), "number of threads (default: all)")
-      ("quiet", "no messages but errors")
-      ("json", "results on standard output as JSON")
-      ("progress", po::value<std::string>()->value_name("WHEN")->default_value("auto"), "auto, always or never (auto: on a terminal)")
-      ("help,h", "this text")
-      ("version", "which version this is");
+  options.add_options()("threads", po::value<int>()->value_name("N"), "number of threads (default: all)")(
+      "quiet", "no messages but errors")("json", "results on standard output as JSON")(
+      "progress", po::value<std::string>()->value_name("WHEN")->default_value("auto"),
+      "auto, always or never (auto: on a terminal)")("help,h", "this text")("version",
+                                                                            "which version this is");
 }
 
 int output_status() {
@@ -27,15 +25,20 @@ int output_status() {
   return report_error({Errc::output, {}, "standard output cannot be written"});
 }
 
-Parsed parse(int argc, char** argv, const po::options_description& shown, const std::string& arguments,
-             const std::string& usage, const std::string& description) {
+Parsed parse(int argc,
+             char** argv,
+             const po::options_description& shown,
+             const std::string& arguments,
+             const std::string& usage,
+             const std::string& description) {
   po::options_description options;
   options.add(shown).add_options()(arguments.c_str(), po::value<std::vector<std::string>>());
   po::positional_options_description positional;
   positional.add(arguments.c_str(), -1);
   Parsed out;
   const auto refuse = [&](const std::string& what) {
-    std::cerr << "evenfield " << argv[0] << ": " << escape_control(what) << "; see evenfield " << argv[0] << " --help\n";
+    std::cerr << "evenfield " << argv[0] << ": " << escape_control(what) << "; see evenfield " << argv[0]
+              << " --help\n";
     out.exit = exit_status(Errc::usage);
     return out;
   };
@@ -43,7 +46,8 @@ Parsed parse(int argc, char** argv, const po::options_description& shown, const 
     // No guessing of abbreviated options: a script must not change its meaning when options are added.
     using po::command_line_style::unix_style;
     const int style = unix_style & ~po::command_line_style::allow_guessing;
-    po::store(po::command_line_parser(argc, argv).options(options).positional(positional).style(style).run(), out.values);
+    po::store(po::command_line_parser(argc, argv).options(options).positional(positional).style(style).run(),
+              out.values);
     if (out.values.contains("help")) {
       std::cout << "Usage: " << usage << "\n\n" << description << "\n\n" << shown;
       out.exit = output_status();
@@ -69,7 +73,8 @@ Parsed parse(int argc, char** argv, const po::options_description& shown, const 
   const std::string progress = out.values["progress"].as<std::string>();
   if (progress != "auto" && progress != "always" && progress != "never")
     return refuse("--progress: found '" + progress + "', expected auto, always or never");
-  out.common.progress = progress == "always" || (progress == "auto" && !out.common.quiet && isatty(STDERR_FILENO) != 0);
+  out.common.progress =
+      progress == "always" || (progress == "auto" && !out.common.quiet && isatty(STDERR_FILENO) != 0);
   return out;
 }
 

@@ -397,6 +397,39 @@ Result<TomlDocument> TomlDocument::read(const std::filesystem::path& file) {
   return parse(text, file);
 }
 
+namespace {
+
+bool at_odds(std::string_view text) {
+  try {
+    const auto ignored = toml::parse(text);
+    return false;
+  } catch (const ParserAtOdds&) {
+    return true;
+  } catch (...) {
+    return false;
+  }
+}
+
+/// The parser gives no place when it gives up: the first line whose presence makes it do so, by halving.
+int line_at_odds(std::string_view text) {
+  std::vector<std::size_t> ends;
+  for (std::size_t i = 0; i < text.size(); ++i)
+    if (text[i] == '\n') ends.push_back(i + 1);
+  if (ends.empty() || ends.back() != text.size()) ends.push_back(text.size());
+  std::size_t low = 0;
+  std::size_t high = ends.size() - 1;
+  while (low < high) {
+    const std::size_t middle = low + (high - low) / 2;
+    if (at_odds(text.substr(0, ends[middle])))
+      high = middle;
+    else
+      low = middle + 1;
+  }
+  return static_cast<int>(low) + 1;
+}
+
+}  // namespace
+
 Result<TomlDocument> TomlDocument::parse(std::string_view text, const std::filesystem::path& name) {
   if (text.size() > kMaxBytes)
     return Error{
@@ -407,8 +440,9 @@ Result<TomlDocument> TomlDocument::parse(std::string_view text, const std::files
   try {
     parsed = toml::parse(text);
   } catch (const ParserAtOdds&) {
-    return Error{
-        Errc::input, {name, {}, {}, {}}, "found text that the parser cannot take apart, expected TOML 1.0"};
+    return Error{Errc::input,
+                 {name, line_at_odds(text), {}, {}},
+                 "found text that the parser cannot take apart, expected TOML 1.0"};
   }
   if (!parsed) {
     const toml::parse_error& error = parsed.error();

@@ -82,7 +82,8 @@ class Containers(unittest.TestCase):
                                 self.assertIsNone(found[key][field])
                             else:
                                 # Sums of floats are rounded where those of integers are exact.
-                                self.assertAlmostEqual(found[key][field] / quantity[field], 1, delta=1e-9, msg=key)
+                                self.assertAlmostEqual(found[key][field], quantity[field], msg=f"{key} {field}",
+                                                       delta=1e-9 * abs(quantity[field]) + 1e-15)
 
 
 if __name__ == "__main__":

@@ -284,7 +284,7 @@ TEST_CASE("a negative exposure is an error, and so is a bias with one") {
   const SmallSession folder;
   CHECK(folder.error_line(
             "schema = 1\n[[series]]\nkind = \"dark\"\nexposure_s = -0.01\nfiles = [\"dark.tif\"]\n") ==
-        "s.toml, line 4, series[1].exposure_s: found -0.01, expected a number of at least 0");
+        "s.toml, line 4, series[1].exposure_s: found -0.01, expected a number from 0 to 1000000");
   CHECK(folder.error_line(
             "schema = 1\n[[series]]\nkind = \"bias\"\nexposure_s = 0.01\nfiles = [\"dark.tif\"]\n") ==
         "s.toml, line 4, series[1].exposure_s: found an exposure above 0, expected 0 or no such key: a bias "
