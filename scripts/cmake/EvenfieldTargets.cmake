@@ -52,7 +52,8 @@ function(cases folder)
   target_include_directories(${target} PRIVATE ${CMAKE_CURRENT_SOURCE_DIR})
   target_link_libraries(${target} PRIVATE ${arg_USES} ${arg_LINKS} Threads::Threads)
   evenfield_compile_rules(${target})
-  target_compile_definitions(${target} PRIVATE EVENFIELD_SOURCE_DIR="${CMAKE_SOURCE_DIR}"
+  # Checks that call functions instead of unrolling: tests compile in half the time.
+  target_compile_definitions(${target} PRIVATE DOCTEST_CONFIG_SUPER_FAST_ASSERTS EVENFIELD_SOURCE_DIR="${CMAKE_SOURCE_DIR}"
                                                EVENFIELD_PROGRAM="$<TARGET_FILE:evenfield>")
   add_dependencies(${target} evenfield)
   add_test(NAME ${folder} COMMAND ${target})

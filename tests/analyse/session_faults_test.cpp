@@ -29,6 +29,7 @@ void usual_series(Scene& scene, int flat_frames = 4) {
     add_series(scene, SeriesKind::flat, t, flat_frames);
 }
 
+const Finding* finding(Characterization&&, const std::string&) = delete;  // it would dangle
 const Finding* finding(const Characterization& result, const std::string& code) {
   const auto found = std::find_if(result.findings.begin(), result.findings.end(),
                                   [&](const Finding& f) { return f.code == code; });
@@ -87,7 +88,8 @@ TEST_CASE("darks cut off at code zero are a problem that names read noise") {
   Scene clear = camera(2);
   clear.camera.offset_dn = 12;  // eight standard deviations
   usual_series(clear);
-  CHECK(finding(measure_scene(clear).result, "clipped-dark") == nullptr);
+  const Measurement clean = measure_scene(clear);
+  CHECK(finding(clean.result, "clipped-dark") == nullptr);
 }
 
 TEST_CASE("a session of saturated flats alone has no saturation but an upper limit") {
@@ -143,7 +145,8 @@ TEST_CASE("an ideally straight response has a linearity error whose interval rea
     Scene scene = camera(20 + seed);
     scene.light.drift_percent = seed % 2 == 0 ? 0.0 : 1.0;
     usual_series(scene);
-    const Quantity& error = quantity(measure_scene(scene).result, "linearity_error_percent");
+    const Measurement m = measure_scene(scene);
+    const Quantity& error = quantity(m.result, "linearity_error_percent");
     REQUIRE(error.value);
     if (*error.low95 == 0) ++reaches;
   }
@@ -154,7 +157,8 @@ TEST_CASE("a pattern that is not resolved has an upper limit above zero") {
   for (std::uint64_t seed = 0; seed < 8; ++seed) {
     Scene scene = camera(40 + seed);
     usual_series(scene);
-    const Quantity& pattern = quantity(measure_scene(scene).result, "dsnu_dn");
+    const Measurement m = measure_scene(scene);
+    const Quantity& pattern = quantity(m.result, "dsnu_dn");
     REQUIRE(pattern.high95);
     CHECK(*pattern.high95 > 0.005);
     if (pattern.value) CHECK(*pattern.standard_uncertainty < 0.1);

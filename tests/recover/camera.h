@@ -76,6 +76,9 @@ inline Measurement measure_scene(const Scene& scene, int threads = 2) {
   return out;
 }
 
+const Quantity& quantity(Characterization&&,
+                         const std::string&,
+                         const std::string& = {}) = delete;  // it would dangle
 inline const Quantity& quantity(const Characterization& result,
                                 const std::string& name,
                                 const std::string& region = "whole") {
