@@ -5,6 +5,7 @@
 #include <bit>
 #include <cmath>
 #include <limits>
+#include <mutex>
 
 #include "base/interrupt.h"
 #include "base/text.h"
@@ -277,6 +278,9 @@ bool read_piece(fitsfile* handle,
 Result<FitsHandle> open_fits(const std::filesystem::path& path, const std::string& name) {
   fitsfile* raw = nullptr;
   int status = 0;
+  // The library sets itself up at its first call, behind a flag that it reads without a lock.
+  static std::once_flag set_up;
+  std::call_once(set_up, [] { fits_init_cfitsio(); });
   fits_open_diskfile(&raw, name.c_str(), READONLY, &status);
   FitsHandle handle(raw);
   if (status != 0) return Error{Errc::input, {path, {}, {}, {}}, "cannot be read: " + fits_words(status)};
