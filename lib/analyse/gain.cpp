@@ -216,11 +216,6 @@ SeriesWeights plan_noise(const RegionLevels& levels, double gain, GainAndNoise& 
 
 }  // namespace
 
-double GainAndNoise::dark_excess_at(const RegionLevels& levels, const Level& level) const {
-  if (!level.dark_variance || reference_dark.empty()) return 0;
-  return *level.dark_variance - levels.dark_variance(reference_dark);
-}
-
 GainAndNoise find_gain_and_noise(const RegionLevels& levels) {
   GainAndNoise out;
   plan_gain(levels, out);
@@ -237,8 +232,6 @@ GainAndNoise find_gain_and_noise(const RegionLevels& levels) {
   GainProblem problem(levels, out, noise_dark, unit);
   whole = problem.at(-1, &line);
   out.line_intercept_dn2 = line.intercept;
-  out.chi2 = line.chi2;
-  out.chi2_dof = line.degrees_of_freedom;
   if (!whole[kGain] && out.gain_reason.empty())
     out.gain_reason = "the temporal variance does not rise with the signal";
 

@@ -28,11 +28,8 @@ struct GainAndNoise {
   std::string gain_note, read_noise_method, read_noise_note;
   std::vector<std::size_t> gain_levels;  ///< indices into RegionLevels::levels()
   double line_intercept_dn2 = 0;
-  double dark_excess_at(const RegionLevels& levels,
-                        const Level& level) const;  ///< V_dark(t) - V_dark(t0) [DN^2]
-  SeriesWeights reference_dark;                     ///< V_dark(t0)
+  SeriesWeights reference_dark;           ///< V_dark(t0)
   std::optional<double> read_exposure_s;  ///< exposure of the darks behind read noise; 0 if extrapolated
-  double chi2 = 0, chi2_dof = 0;          ///< of the line
   double origin_disagreement = 0;  ///< origin line less line, in standard uncertainties of the difference
   Correlations correlations;       ///< of gain, its inverse, origin gain and read noise
 };
