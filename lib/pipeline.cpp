@@ -55,18 +55,15 @@ std::vector<std::size_t> darks_first(const Session& session) {
   return order;
 }
 
-Status read_series(const OpenedSession& opened,
-                   const FrameStack& stack,
-                   const Geometry& geometry,
-                   std::size_t s,
-                   int threads,
-                   AnalysisInput& input) {
-  const Series& series = opened.session.series[s];
+AccumulateOptions options_for(const Series& series, int threads) {
   AccumulateOptions options;
   options.threads = threads;
   if (series.conditions.kind != SeriesKind::flat) options.fewest_frames_for_hits = kDarkFramesForHits;
-  auto sums = accumulate(stack, geometry, options);
-  if (!sums) return sums.error();
+  return options;
+}
+
+/// `input` holds what came before in the order of reading: all darks, if the series is a flat.
+void add_series(const Series& series, SeriesStatistics sums, std::size_t s, AnalysisInput& input) {
   SeriesInput& out = input.series[s];
   for (std::size_t r = 0; r < input.regions.size(); ++r) {
     std::optional<double> dark_level;
@@ -77,11 +74,10 @@ Status read_series(const OpenedSession& opened,
           return sum + dark.second * input.series[dark.first].regions[r].mean;
         });
     }
-    out.regions.push_back(summarize(sums->regions[r], dark_level));
+    out.regions.push_back(summarize(sums.regions[r], dark_level));
   }
-  out.fingerprints = std::move(sums->fingerprints);
-  out.code_sample = std::move(sums->code_sample);
-  return Done{};
+  out.fingerprints = std::move(sums.fingerprints);
+  out.code_sample = std::move(sums.code_sample);
 }
 
 /// Tells work that goes on beside that nobody waits for it any more.
@@ -119,15 +115,25 @@ Status read_all(const OpenedSession& opened,
   // for the last frame of either.
   std::future<Result<FrameStack>> next = std::async(std::launch::async, open, 0);
   const GiveUp on_return(give_up);  // after `next`, whose end waits for the work
+  // What a series gave is summed up while the next one is read.
+  std::future<void> summary;
+  AccumulateBuffers buffers;
   for (std::size_t turn = 0; turn < order.size(); ++turn) {
     const Result<FrameStack> stack = next.get();
     if (!stack) return stack.error();
     if (interrupt_requested()) return interrupted();
     if (turn + 1 < order.size()) next = std::async(std::launch::async, open, turn + 1);
-    const Status read = read_series(opened, *stack, geometry, order[turn], threads, input);
-    if (!read) return read;
+    const Series& series = opened.session.series[order[turn]];
+    auto sums = accumulate(*stack, geometry, options_for(series, threads), buffers);
+    if (summary.valid()) summary.get();
+    if (!sums) return sums.error();
+    summary =
+        std::async(std::launch::async, [&series, &input, s = order[turn], made = std::move(*sums)]() mutable {
+          add_series(series, std::move(made), s, input);
+        });
     progress.series_done = static_cast<int>(turn) + 1;
   }
+  if (summary.valid()) summary.get();
   return Done{};
 }
 

@@ -7,6 +7,7 @@
 #include <map>
 #include <memory>
 #include <mutex>
+#include <new>
 #include <string_view>
 #include <vector>
 
@@ -18,19 +19,42 @@ namespace {
 
 using Hash = std::array<std::uint64_t, 2>;
 
-/// What one band gives: per cell its statistics in each group and its squared totals, per frame its part of
-/// the hash.
+/// What one band gives: per cell its statistics in each group and its squared totals, per frame its row sums
+/// and its part of the hash.
 struct BandResult {
   std::vector<CellStatistics> cells;  ///< [cell][group]
   std::vector<CellSquares> squares;   ///< [cell]
-  std::vector<double> total_centres;  ///< [cell]
+  std::vector<double> row_sums;       ///< [region of the band][frame][row of the band] sum over columns of y
   std::vector<Hash> hashes;           ///< [frame]
+};
+
+/// Memory that is not filled with zeros before use, at the begin of a line of the cache.
+class RawMemory {
+ public:
+  /// At least so many bytes; what was there is lost if there were fewer.
+  std::byte* room_for(std::size_t bytes) {
+    if (bytes > bytes_) {
+      memory_.reset();
+      memory_.reset(static_cast<std::byte*>(::operator new(bytes, kLine)));
+      bytes_ = bytes;
+    }
+    return memory_.get();
+  }
+
+ private:
+  static constexpr std::align_val_t kLine{64};
+  struct Free {
+    void operator()(std::byte* p) const { ::operator delete(p, kLine); }
+  };
+  std::unique_ptr<std::byte, Free> memory_;
+  std::size_t bytes_ = 0;
 };
 
 /// What one thread needs while it works on a band.
 struct BandBuffers {
-  std::vector<std::byte> rows;     ///< [frame of the group][row][column]
-  std::vector<CellTotals> totals;  ///< [cell]
+  RawMemory rows;       ///< [frame of the group][row][column]
+  RawMemory totals;     ///< CellTotals [cell]
+  RawMemory workspace;  ///< of the kernels
   std::vector<std::vector<std::pair<double, double>>>
       known;  ///< [region][block] lowest and highest code seen by this thread
 };
@@ -44,6 +68,7 @@ class Accumulator {
   int groups() const { return static_cast<int>(sizes_.size()); }
 
  private:
+  void sum_rows(const Band& band, BandResult& result) const;
   void add_cell(const Band& band, const Cell& cell, const BandResult& result, std::size_t index);
 
   const FrameStack& frames_;
@@ -75,15 +100,17 @@ Accumulator::Accumulator(const FrameStack& frames, const Geometry& geometry, con
     region.total_square.resize(blocks);
     region.lowest.resize(blocks);
     region.highest.resize(blocks);
+    region.bits = {true, 0, ~std::uint64_t{0}};
+    region.neighbours.resize(blocks);
     region.block_hits.resize(blocks);
     region.frame_hits.resize(hashes_.size());
     region.row_sums.resize(hashes_.size() * static_cast<std::size_t>(grid.rect.height));
     region.column_sums.resize(static_cast<std::size_t>(grid.rect.width));
     int first = 0;
     for (const int size : sizes_) {
-      GroupStatistics group{first, size, {}, {}};
-      group.sums.resize(blocks * static_cast<std::size_t>(size));
-      group.gram.resize(blocks * pair_count(size));
+      GroupStatistics group{first, size, {}, {}, {}};
+      for (std::vector<double>* sums : {&group.sums, &group.squares, &group.with_total})
+        sums->resize(blocks * static_cast<std::size_t>(size));
       region.groups.push_back(std::move(group));
       first += size;
     }
@@ -97,11 +124,14 @@ Status Accumulator::measure(int band_index, BandBuffers& buffers, BandResult& ou
   const std::size_t pixel_bytes = bytes_per_pixel(shape.type);
   const std::size_t row_bytes = static_cast<std::size_t>(shape.width) * pixel_bytes;
   const std::size_t frame_bytes = row_bytes * static_cast<std::size_t>(band.height);
-  buffers.rows.resize(std::max(buffers.rows.size(), frame_bytes * kGroupFrames));
-  buffers.totals.resize(std::max(buffers.totals.size(), band.cells.size()));
+  std::byte* const pixels = buffers.rows.room_for(frame_bytes * kGroupFrames + kReadBeyond);
+  const bool one_group = sizes_.size() == 1;
+  // Plain numbers, written before they are read.
+  auto* const totals = reinterpret_cast<CellTotals*>(
+      buffers.totals.room_for(sizeof(CellTotals) * (one_group ? std::size_t{1} : band.cells.size())));
+  void* const workspace = buffers.workspace.room_for(kernels_.workspace_bytes);
   out.cells.resize(band.cells.size() * sizes_.size());
   out.squares.resize(band.cells.size());
-  out.total_centres.resize(band.cells.size());
   out.hashes.assign(hashes_.size(), Hash{});
 
   int first = 0;
@@ -111,9 +141,10 @@ Status Accumulator::measure(int band_index, BandBuffers& buffers, BandResult& ou
     input.frames = sizes_[g];
     input.height = band.height;
     input.first_group = g == 0;
+    input.last_group = g + 1 == sizes_.size();
     input.hit_threshold = sizes_[g] >= options_.fewest_frames_for_hits ? options_.hit_threshold : 0.0;
     for (int f = 0; f < sizes_[g]; ++f) {
-      std::byte* rows = buffers.rows.data() + frame_bytes * static_cast<std::size_t>(f);
+      std::byte* rows = pixels + frame_bytes * static_cast<std::size_t>(f);
       if (const Status read = frames_.read_rows(first + f, band.y, band.height, rows); !read) return read;
       Hash& hash = out.hashes[static_cast<std::size_t>(first + f)];
       for (int y = 0; y < band.height; ++y) {
@@ -127,15 +158,14 @@ Status Accumulator::measure(int band_index, BandBuffers& buffers, BandResult& ou
       const Cell& cell = band.cells[c];
       input.width = cell.width;
       for (int f = 0; f < sizes_[g]; ++f)
-        input.pixels[static_cast<std::size_t>(f)] = buffers.rows.data() +
-                                                    frame_bytes * static_cast<std::size_t>(f) +
+        input.pixels[static_cast<std::size_t>(f)] = pixels + frame_bytes * static_cast<std::size_t>(f) +
                                                     pixel_bytes * static_cast<std::size_t>(cell.x);
       CellStatistics& statistics = out.cells[c * sizes_.size() + g];
       auto& [lowest, highest] =
           buffers.known[static_cast<std::size_t>(cell.region)][static_cast<std::size_t>(cell.block)];
       input.known_lowest = lowest;
       input.known_highest = highest;
-      kernels_.measure(input, buffers.totals[c], statistics);
+      kernels_.measure(input, totals[one_group ? 0 : c], workspace, statistics, out.squares[c]);
       if (statistics.bad_frame >= 0)
         return frames_.error_at(first + statistics.bad_frame,
                                 "found a pixel that is not a finite number, expected finite pixels");
@@ -144,11 +174,30 @@ Status Accumulator::measure(int band_index, BandBuffers& buffers, BandResult& ou
     }
     first += sizes_[g];
   }
-  for (std::size_t c = 0; c < band.cells.size(); ++c) {
-    kernels_.square(buffers.totals[c], band.cells[c].width, band.height, out.squares[c]);
-    out.total_centres[c] = buffers.totals[c].centre;
-  }
+  sum_rows(band, out);
   return Done{};
+}
+
+/// Row sums over the cells of each region. Done here, where threads work side by side, and in the order of
+/// cells.
+void Accumulator::sum_rows(const Band& band, BandResult& result) const {
+  const auto height = static_cast<std::size_t>(band.height);
+  const std::size_t frames = hashes_.size();
+  result.row_sums.assign(band.regions.size() * frames * height, 0.0);
+  for (std::size_t c = 0; c < band.cells.size(); ++c) {
+    const Cell& cell = band.cells[c];
+    const auto place =
+        std::find(band.regions.begin(), band.regions.end(), cell.region) - band.regions.begin();
+    double* sums = result.row_sums.data() + static_cast<std::size_t>(place) * frames * height;
+    for (std::size_t g = 0; g < sizes_.size(); ++g) {
+      const CellStatistics& s = result.cells[c * sizes_.size() + g];
+      const double level = cell.width * s.centre;
+      for (int f = 0; f < sizes_[g]; ++f, sums += height) {
+        const double* rows = s.row_sums.data() + f * kCellRows;
+        for (std::size_t y = 0; y < height; ++y) sums[y] += rows[y] + level;
+      }
+    }
+  }
 }
 
 void merge_extreme(Extreme& into, const Extreme& other, bool highest, bool begun) {
@@ -158,12 +207,20 @@ void merge_extreme(Extreme& into, const Extreme& other, bool highest, bool begun
     into.count += other.count;
 }
 
+void add_neighbours(NeighbourSums& into, const NeighbourSums& other) {
+  into.pixels += other.pixels;
+  into.square += other.square;
+  for (std::size_t k = 0; k < kNeighbours; ++k) {
+    into.pairs[k] += other.pairs[k];
+    into.products[k] += other.products[k];
+  }
+}
+
 void Accumulator::add_cell(const Band& band, const Cell& cell, const BandResult& result, std::size_t index) {
   RegionStatistics& region = out_.regions[static_cast<std::size_t>(cell.region)];
   const auto block = static_cast<std::size_t>(cell.block);
   const bool begun = region.pixels[block] > 0;
   const double pixels = cell.width * band.height;
-  const auto height = static_cast<std::size_t>(region.rect.height);
   if (!begun) region.centre[block] = result.cells[index * sizes_.size()].centre;
   region.pixels[block] += static_cast<std::int64_t>(cell.width) * band.height;
   for (std::size_t g = 0; g < sizes_.size(); ++g) {
@@ -172,38 +229,46 @@ void Accumulator::add_cell(const Band& band, const Cell& cell, const BandResult&
     const int frames = group.frames;
     // From the cell's own centre to the block's.
     const double shift = s.centre - region.centre[block];
-    double* sums = group.sums.data() + block * static_cast<std::size_t>(frames);
-    double* gram = group.gram.data() + block * pair_count(frames);
+    const std::size_t at = block * static_cast<std::size_t>(frames);
+    double group_sum = 0;
+    for (int i = 0; i < frames; ++i) group_sum += s.sums[static_cast<std::size_t>(i)];
     for (int i = 0; i < frames; ++i) {
-      const double sum = s.sums[static_cast<std::size_t>(i)];
-      sums[i] += sum + pixels * shift;
-      for (int j = i; j < frames; ++j)
-        gram[pair_index(i, j, frames)] += s.gram[pair_index(i, j, frames)] +
-                                          shift * (sum + s.sums[static_cast<std::size_t>(j)]) +
-                                          pixels * shift * shift;
+      const auto k = static_cast<std::size_t>(i);
+      const double sum = s.sums[k];
+      group.sums[at + k] += sum + pixels * shift;
+      group.squares[at + k] += s.squares[k] + 2 * shift * sum + pixels * shift * shift;
+      group.with_total[at + k] +=
+          s.with_total[k] + shift * (frames * sum + group_sum) + pixels * frames * shift * shift;
       region.frame_hits[static_cast<std::size_t>(group.first_frame + i)] +=
           s.hits[static_cast<std::size_t>(i)];
       region.block_hits[block] += s.hits[static_cast<std::size_t>(i)];
-      double* rows = region.row_sums.data() + static_cast<std::size_t>(group.first_frame + i) * height +
-                     static_cast<std::size_t>(band.y - region.rect.y);
-      for (int y = 0; y < band.height; ++y)
-        rows[y] += s.row_sums[static_cast<std::size_t>(i * kCellRows + y)] + cell.width * s.centre;
     }
     merge_extreme(region.lowest[block], s.lowest, false, begun || g > 0);
     merge_extreme(region.highest[block], s.highest, true, begun || g > 0);
+    region.bits = {region.bits.valid && s.bits.valid, region.bits.any | s.bits.any,
+                   region.bits.all & s.bits.all};
+    if (g == 0) add_neighbours(region.neighbours[block], s.neighbours);
   }
   const CellSquares& squares = result.squares[index];
-  const double shift = out_.frames * (result.total_centres[index] - region.centre[block]);
+  const double shift = out_.frames * (squares.centre - region.centre[block]);
   region.total_square[block] += squares.square + 2 * shift * squares.sum + pixels * shift * shift;
   double* columns = region.column_sums.data() + (cell.x - region.rect.x);
-  for (int x = 0; x < cell.width; ++x)
-    columns[x] += squares.column_sums[static_cast<std::size_t>(x)] +
-                  static_cast<double>(band.height) * out_.frames * result.total_centres[index];
+  const double* sums = squares.column_sums.data();
+  const double level = static_cast<double>(band.height) * out_.frames * squares.centre;
+  for (int x = 0; x < cell.width; ++x) columns[x] += sums[x] + level;
 }
 
 void Accumulator::add(int band_index, const BandResult& result) {
   const Band& band = geometry_.bands[static_cast<std::size_t>(band_index)];
   for (std::size_t c = 0; c < band.cells.size(); ++c) add_cell(band, band.cells[c], result, c);
+  const double* sums = result.row_sums.data();
+  for (const int index : band.regions) {
+    RegionStatistics& region = out_.regions[static_cast<std::size_t>(index)];
+    const auto rows = static_cast<std::size_t>(region.rect.height);
+    for (std::size_t f = 0; f < hashes_.size(); ++f, sums += band.height)
+      std::copy_n(sums, band.height,
+                  region.row_sums.data() + f * rows + static_cast<std::size_t>(band.y - region.rect.y));
+  }
   for (std::size_t f = 0; f < hashes_.size(); ++f)
     hashes_[f] = {hashes_[f][0] + result.hashes[f][0], hashes_[f][1] + result.hashes[f][1]};
 }
@@ -222,9 +287,8 @@ SeriesStatistics Accumulator::finish() {
 
 /// The different finite codes among these pixels, ascending.
 template <class T>
-std::vector<double> different_codes(const std::vector<std::byte>& bytes) {
-  const auto* pixels = reinterpret_cast<const T*>(bytes.data());
-  const std::size_t count = bytes.size() / sizeof(T);
+std::vector<double> different_codes(const std::byte* bytes, std::size_t count) {
+  const auto* pixels = reinterpret_cast<const T*>(bytes);
   std::vector<double> codes;
   if constexpr (std::is_integral_v<T> && sizeof(T) <= 2) {
     // A mark for each code there can be costs less than sorting.
@@ -243,87 +307,112 @@ std::vector<double> different_codes(const std::vector<std::byte>& bytes) {
 }
 
 /// Codes that occur in the middle rows of the first region in the first frame, in about 65 000 pixels.
-Result<std::vector<double>> code_sample(const FrameStack& frames, const Geometry& geometry) {
+Status sample_codes(const FrameStack& frames, const Geometry& geometry, std::vector<double>& out) {
   constexpr int kSamplePixels = 65536;
   const FrameShape shape = frames.shape();
   const Rect& rect = geometry.grids.front().rect;
   const int rows = std::clamp(kSamplePixels / shape.width, 1, rect.height);
   const int y = rect.y + (rect.height - rows) / 2;
   const std::size_t count = static_cast<std::size_t>(shape.width) * static_cast<std::size_t>(rows);
-  std::vector<std::byte> bytes(count * bytes_per_pixel(shape.type));
-  if (const Status read = frames.read_rows(0, y, rows, bytes.data()); !read) return read.error();
+  RawMemory memory;
+  std::byte* bytes = memory.room_for(count * bytes_per_pixel(shape.type));
+  if (const Status read = frames.read_rows(0, y, rows, bytes); !read) return read;
   switch (shape.type) {
     case PixelType::u8:
-      return different_codes<std::uint8_t>(bytes);
+      out = different_codes<std::uint8_t>(bytes, count);
+      break;
     case PixelType::i8:
-      return different_codes<std::int8_t>(bytes);
+      out = different_codes<std::int8_t>(bytes, count);
+      break;
     case PixelType::u16:
-      return different_codes<std::uint16_t>(bytes);
+      out = different_codes<std::uint16_t>(bytes, count);
+      break;
     case PixelType::i16:
-      return different_codes<std::int16_t>(bytes);
+      out = different_codes<std::int16_t>(bytes, count);
+      break;
     case PixelType::u32:
-      return different_codes<std::uint32_t>(bytes);
+      out = different_codes<std::uint32_t>(bytes, count);
+      break;
     case PixelType::i32:
-      return different_codes<std::int32_t>(bytes);
+      out = different_codes<std::int32_t>(bytes, count);
+      break;
     case PixelType::f32:
-      return different_codes<float>(bytes);
+      out = different_codes<float>(bytes, count);
+      break;
     case PixelType::f64:
-      return different_codes<double>(bytes);
+      out = different_codes<double>(bytes, count);
+      break;
   }
-  return std::vector<double>{};
+  return Done{};
 }
 
 }  // namespace
 
+struct AccumulateBuffers::Impl {
+  std::vector<BandBuffers> workers;
+};
+AccumulateBuffers::AccumulateBuffers() : impl_(std::make_unique<Impl>()) {}
+AccumulateBuffers::~AccumulateBuffers() = default;
+
 Result<SeriesStatistics> accumulate(const FrameStack& frames,
                                     const Geometry& geometry,
                                     const AccumulateOptions& options) {
+  AccumulateBuffers buffers;
+  return accumulate(frames, geometry, options, buffers);
+}
+
+Result<SeriesStatistics> accumulate(const FrameStack& frames,
+                                    const Geometry& geometry,
+                                    const AccumulateOptions& options,
+                                    AccumulateBuffers& kept) {
   if (frames.frames() > kMostFrames)
     return frames.error_at(kMostFrames, "found more than " + std::to_string(kMostFrames) +
                                             " frames in one series, expected fewer; split the series");
   Accumulator accumulator(frames, geometry, options);
   const auto workers = static_cast<std::size_t>(std::max(1, options.threads));
-  std::vector<BandBuffers> buffers(workers);
-  for (BandBuffers& buffer : buffers)
+  std::vector<BandBuffers>& buffers = kept.impl().workers;
+  if (buffers.size() < workers) buffers.resize(workers);
+  for (BandBuffers& buffer : buffers) {
+    buffer.known.clear();
     for (const BlockGrid& grid : geometry.grids) {
       constexpr double kNone = std::numeric_limits<double>::infinity();
       buffer.known.emplace_back(static_cast<std::size_t>(grid.columns * grid.rows), std::pair(kNone, -kNone));
     }
+  }
 
   // Results that came before their turn wait here; as bands are handed out in order, there are few.
   std::mutex guard;
   std::map<int, std::unique_ptr<BandResult>> waiting;
   std::vector<std::unique_ptr<BandResult>> spare;
   int next = 0;
-  const Status done = for_each_item(
-      static_cast<int>(geometry.bands.size()), options.threads, [&](int band, int worker) -> Status {
-        std::unique_ptr<BandResult> result;
-        {
-          const std::lock_guard lock(guard);
-          if (!spare.empty()) {
-            result = std::move(spare.back());
-            spare.pop_back();
-          }
-        }
-        if (!result) result = std::make_unique<BandResult>();
-        if (const Status measured =
-                accumulator.measure(band, buffers[static_cast<std::size_t>(worker)], *result);
-            !measured)
-          return measured;
-        const std::lock_guard lock(guard);
-        waiting.emplace(band, std::move(result));
-        for (auto turn = waiting.find(next); turn != waiting.end(); turn = waiting.find(++next)) {
-          accumulator.add(next, *turn->second);
-          spare.push_back(std::move(turn->second));
-          waiting.erase(turn);
-        }
-        return Done{};
-      });
+  const auto bands = static_cast<int>(geometry.bands.size());
+  std::vector<double> codes;
+  const Status done = for_each_item(bands + 1, options.threads, [&](int band, int worker) -> Status {
+    if (band == bands) return sample_codes(frames, geometry, codes);
+    std::unique_ptr<BandResult> result;
+    {
+      const std::lock_guard lock(guard);
+      if (!spare.empty()) {
+        result = std::move(spare.back());
+        spare.pop_back();
+      }
+    }
+    if (!result) result = std::make_unique<BandResult>();
+    if (const Status measured = accumulator.measure(band, buffers[static_cast<std::size_t>(worker)], *result);
+        !measured)
+      return measured;
+    const std::lock_guard lock(guard);
+    waiting.emplace(band, std::move(result));
+    for (auto turn = waiting.find(next); turn != waiting.end(); turn = waiting.find(++next)) {
+      accumulator.add(next, *turn->second);
+      spare.push_back(std::move(turn->second));
+      waiting.erase(turn);
+    }
+    return Done{};
+  });
   if (!done) return done.error();
   SeriesStatistics out = accumulator.finish();
-  auto codes = code_sample(frames, geometry);
-  if (!codes) return codes.error();
-  out.code_sample = std::move(*codes);
+  out.code_sample = std::move(codes);
   return out;
 }
 

@@ -6,6 +6,8 @@
 /// handed out in order and their results added in order, so that every number, floating-point frames
 /// included, is the same for any number of threads.
 
+#include <memory>
+
 #include "accumulate/geometry.h"
 #include "accumulate/series_statistics.h"
 #include "base/error.h"
@@ -26,8 +28,28 @@ struct AccumulateOptions {
   bool portable_kernels = false;
 };
 
+/// What the threads work in. Keep it from one series to the next: making it anew costs as much as measuring a
+/// small one. Used by one call at a time.
+class AccumulateBuffers {
+ public:
+  AccumulateBuffers();
+  ~AccumulateBuffers();
+  AccumulateBuffers(const AccumulateBuffers&) = delete;
+  AccumulateBuffers& operator=(const AccumulateBuffers&) = delete;
+
+  struct Impl;
+  Impl& impl() { return *impl_; }
+
+ private:
+  std::unique_ptr<Impl> impl_;
+};
+
 /// Errors (input): rows that cannot be read, a pixel that is not a finite number, more than kMostFrames
 /// frames.
+Result<SeriesStatistics> accumulate(const FrameStack& frames,
+                                    const Geometry& geometry,
+                                    const AccumulateOptions& options,
+                                    AccumulateBuffers& buffers);
 Result<SeriesStatistics> accumulate(const FrameStack& frames,
                                     const Geometry& geometry,
                                     const AccumulateOptions& options);

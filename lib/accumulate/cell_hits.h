@@ -11,14 +11,14 @@ inline double temporal_squares(const CellInput& cell, const CellStatistics& s) {
   const double n = cell.width * cell.height;
   double own = 0;
   double all = 0;
-  for (int i = 0; i < cell.frames; ++i)
-    for (int j = i; j < cell.frames; ++j) {
-      const double g = s.gram[pair_index(i, j, cell.frames)] -
-                       s.sums[static_cast<std::size_t>(i)] * s.sums[static_cast<std::size_t>(j)] / n;
-      if (i == j) own += g;
-      all += i == j ? g : 2 * g;
-    }
-  const double squares = own - all / cell.frames;
+  double sum = 0;
+  for (int f = 0; f < cell.frames; ++f) {
+    const auto k = static_cast<std::size_t>(f);
+    own += s.squares[k] - s.sums[k] * s.sums[k] / n;
+    all += s.with_total[k];
+    sum += s.sums[k];
+  }
+  const double squares = own - (all - sum * sum / n) / cell.frames;
   return squares > 0 ? squares : 0;
 }
 
@@ -127,10 +127,19 @@ PixelSeries pixel_series(const CellInput& cell, const Workspace<C>& work, const 
   return out;
 }
 
-/// Replaces hits; returns how many. A hit is a pixel whose highest frame stands above the mean of its other
-/// frames by more than the threshold, while those others agree among themselves: a pixel that blinks, or a
-/// hot one with noise of its own, is not a hit. Hits shift the frame means that all is judged by, so the
-/// caller asks again until there are none.
+/// Sums of a frame after one of its pixels has changed: exact for whole numbers.
+inline void put_right(
+    const CellInput& cell, int frame, int pixel, double before, double after, CellStatistics& out) {
+  const auto f = static_cast<std::size_t>(frame);
+  out.sums[f] += after - before;
+  out.squares[f] += after * after - before * before;
+  out.row_sums[f * kCellRows + static_cast<std::size_t>(pixel / cell.width)] += after - before;
+}
+
+/// Replaces hits and puts the sums of their frames right; returns how many. A hit is a pixel whose highest
+/// frame stands above the mean of its other frames by more than the threshold, while those others agree among
+/// themselves: a pixel that blinks, or a hot one with noise of its own, is not a hit. Hits shift the frame
+/// means that all is judged by, so the caller asks again until there are none.
 template <class C>
 int replace_hits(const CellInput& cell, bool whole_codes, Workspace<C>& work, CellStatistics& out) {
   const int pixels = cell.width * cell.height;
@@ -175,6 +184,7 @@ int replace_hits(const CellInput& cell, bool whole_codes, Workspace<C>& work, Ce
     const double value = others / (cell.frames - 1) + clean_sum[hit_frame[i]] / clean_pixels[hit_frame[i]];
     auto& stored =
         work.centred[static_cast<std::size_t>(hit_frame[i])][static_cast<std::size_t>(hit_pixel[i])];
+    const auto before = static_cast<double>(stored);
     if constexpr (std::is_same_v<C, std::int16_t>) {
       const double whole = std::floor(value + 0.5);
       stored = static_cast<std::int16_t>(whole < -32768 ? -32768 : whole > 32767 ? 32767 : whole);
@@ -182,6 +192,7 @@ int replace_hits(const CellInput& cell, bool whole_codes, Workspace<C>& work, Ce
       stored = whole_codes ? std::floor(value + out.centre + 0.5) - out.centre : value;
     }
     ++out.hits[static_cast<std::size_t>(hit_frame[i])];
+    put_right(cell, hit_frame[i], hit_pixel[i], before, static_cast<double>(stored), out);
   }
   return found;
 }

@@ -11,7 +11,8 @@
 
 namespace evenfield {
 
-inline constexpr std::size_t kCellPixels = static_cast<std::size_t>(kCellRows) * kCellColumns;
+/// So many bytes behind the last pixel of a cell may be read, whatever they are.
+inline constexpr std::size_t kReadBeyond = 128;
 
 /// One cell in the frames of one group; rows of a frame are `stride` pixels apart. `pixels` are of the type
 /// that the kernel was chosen for.
@@ -21,7 +22,8 @@ struct CellInput {
   int frames = 0;
   int width = 0;
   int height = 0;
-  bool first_group = true;   ///< the totals are begun, not continued
+  bool first_group = true;   ///< the totals are begun, not continued; neighbours are looked at
+  bool last_group = true;    ///< the totals are complete: CellSquares is filled
   double hit_threshold = 0;  ///< in standard deviations; 0: hits are not looked for
   /// Codes that occur elsewhere in the block; extremes inside them are not counted.
   double known_lowest = std::numeric_limits<double>::infinity();
@@ -30,15 +32,19 @@ struct CellInput {
 
 struct CellStatistics {
   double centre = 0;
-  std::array<double, kGroupFrames> sums{};  ///< of y - centre
-  std::array<double, pair_count(kGroupFrames)> gram{};
+  std::array<double, kGroupFrames> sums{};        ///< of y - centre
+  std::array<double, kGroupFrames> squares{};     ///< of (y - centre)^2
+  std::array<double, kGroupFrames> with_total{};  ///< of (y - centre) x (its sum over the group)
   std::array<double, kGroupFrames * std::size_t{kCellRows}> row_sums{};  ///< [frame][row] of y - centre
   std::array<std::int32_t, kGroupFrames> hits{};
   Extreme lowest, highest;  ///< count 0: not counted, since the block goes further
-  int bad_frame = -1;       ///< a frame with a pixel that is not a finite number; nothing else is valid then
+  CodeBits bits;
+  NeighbourSums neighbours;  ///< of the first two frames, in the first group
+  int bad_frame = -1;        ///< a frame with a pixel that is not a finite number; nothing else is valid then
 };
 
-/// Sums over the frames seen so far, pixel by pixel of the cell, row by row without gaps.
+/// Sums over the frames of the groups seen so far, pixel by pixel of the cell, row by row without gaps. Not
+/// used where a series is one group.
 struct CellTotals {
   double centre = 0;                            ///< of the first group
   double magnitude = 0;                         ///< no total is larger
@@ -46,15 +52,18 @@ struct CellTotals {
   std::array<double, kCellPixels> real;         ///< for all others
 };
 
+/// Of the sums over all frames of y - `centre`.
 struct CellSquares {
+  double centre = 0;
   double square = 0;                               ///< sum over pixels of total^2
   double sum = 0;                                  ///< sum over pixels of total
   std::array<double, kCellColumns> column_sums{};  ///< sum over rows of total
 };
 
 struct CellKernels {
-  void (*measure)(const CellInput&, CellTotals&, CellStatistics&);
-  void (*square)(const CellTotals&, int width, int height, CellSquares&);
+  /// `workspace`: of workspace_bytes, aligned to 64; what is in it does not matter.
+  void (*measure)(const CellInput&, CellTotals&, void* workspace, CellStatistics&, CellSquares&);
+  std::size_t workspace_bytes;
   /// XXH3-128 of a row, seeded by its number, low and high word.
   std::array<std::uint64_t, 2> (*hash)(const void* row, std::size_t bytes, std::uint64_t seed);
 };

@@ -4,212 +4,133 @@
 // and it calls no templates of the standard library that might be emitted on their own, so that no linker can
 // mix code of one set into another.
 #include "accumulate/cell_hits.h"
-#include "accumulate/cell_workspace.h"
+#include "accumulate/cell_neighbours.h"
 
 #define XXH_INLINE_ALL
 #include <xxhash.h>
 
 namespace {
 
-/// The first frame with a pixel that is not finite, or -1.
+/// A whole number amid the codes of the cell, from a few of them; false if they are not whole.
 template <class T>
-int frame_not_finite(const CellInput& cell) {
-  for (int f = 0; f < cell.frames; ++f)
-    for (int y = 0; y < cell.height; ++y)
-      for (int x = 0; x < cell.width; ++x)
-        if (!std::isfinite(row_of<T>(cell, f, y)[x])) return f;
-  return -1;
-}
-
-/// Whether the cell holds whole numbers, also where their type is a floating-point one: the same frames in
-/// another container are then treated alike.
-template <class T>
-bool holds_whole_codes(const CellInput& cell) {
-  if constexpr (std::is_floating_point_v<T>) {
-    for (int y = 0; y < cell.height; ++y)
-      for (int x = 0; x < cell.width; ++x)
-        if (row_of<T>(cell, 0, y)[x] != std::floor(row_of<T>(cell, 0, y)[x])) return false;
-  }
+bool sample_centre(const CellInput& cell, std::int64_t& centre) {
+  std::int64_t low = 0;
+  std::int64_t high = 0;
+  if (!whole_number(*row_of<T>(cell, 0, 0), low)) return false;
+  high = low;
+  for (const int y : {0, cell.height / 2, cell.height - 1})
+    for (const int x : {0, cell.width / 2, cell.width - 1}) {
+      std::int64_t code = 0;
+      if (!whole_number(row_of<T>(cell, 0, y)[x], code)) return false;
+      low = code < low ? code : low;
+      high = code > high ? code : high;
+    }
+  centre = (low + high + 1) >> 1;
   return true;
 }
 
-/// Range of the cell's pixels, which go into `work` on the way: whole ones as they are, real ones as doubles.
-template <class T>
-Range<T> gather(const CellInput& cell, Workspace<Centred<T>>& work) {
-  if constexpr (kWhole<T>) {
-    return whole_gather<T>(cell, work);
-  } else {
-    Range<T> range{*row_of<T>(cell, 0, 0), *row_of<T>(cell, 0, 0)};
-    for (int f = 0; f < cell.frames; ++f) {
-      double* to = work.centred[static_cast<std::size_t>(f)].data();
-      for (int y = 0; y < cell.height; ++y, to += cell.width) {
-        const T* row = row_of<T>(cell, f, y);
-        for (int x = 0; x < cell.width; ++x) {
-          range.low = row[x] < range.low ? row[x] : range.low;
-          range.high = row[x] > range.high ? row[x] : range.high;
-          to[x] = static_cast<double>(row[x]);
-        }
-      }
+inline bool fits_short(const WholeRange& range, std::int64_t centre) {
+  return range.low - centre >= -32768 && range.high - centre <= 32767;
+}
+
+inline void put_sums(const CellInput& cell, const WholeSums& sums, CellStatistics& out) {
+  for (int f = 0; f < cell.frames; ++f) {
+    const auto k = static_cast<std::size_t>(f);
+    std::int32_t total = 0;
+    for (int y = 0; y < cell.height; ++y) {
+      total += sums.rows[f][y];
+      out.row_sums[k * kCellRows + static_cast<std::size_t>(y)] = sums.rows[f][y];
     }
-    return range;
+    out.sums[k] = total;
+    out.squares[k] = static_cast<double>(sums.squares[f]);
   }
 }
 
-template <class T>
-double centre_of(Range<T> range) {
-  if constexpr (kWhole<T>)
-    return static_cast<double>((static_cast<int>(range.low) + static_cast<int>(range.high) + 1) >> 1);
-  else
-    return std::is_integral_v<T>
-               ? std::floor(0.5 * (static_cast<double>(range.low) + static_cast<double>(range.high)))
-               : static_cast<double>(range.low);
+inline void rounded_means(const CellInput& cell, const CellStatistics& s, int* mean) {
+  const int pixels = cell.width * cell.height;
+  for (int f = 0; f < cell.frames; ++f)
+    mean[f] = static_cast<int>(std::floor(s.sums[static_cast<std::size_t>(f)] / pixels + 0.5));
 }
 
+/// Totals and sums across frames; returns how far above its mean over the frames no pixel's highest frame is,
+/// each frame's mean taken out.
+inline double across(const CellInput& cell, double magnitude, WholeWorkspace& work, CellStatistics& out) {
+  int mean[kGroupFrames];
+  rounded_means(cell, out, mean);
+  WholeAcross seen;
+  whole_across(cell, mean, static_cast<int>(magnitude), work, seen);
+  for (int f = 0; f < cell.frames; ++f)
+    out.with_total[static_cast<std::size_t>(f)] = static_cast<double>(seen.with_total[f]);
+  return seen.above_mean;
+}
+inline double across(const CellInput& cell, double, RealWorkspace& work, CellStatistics& out) {
+  return real_across(cell, work, out);
+}
+
+/// No centred pixel is larger.
 template <class C>
-void centre_pixels(const CellInput& cell, double centre, Workspace<C>& work) {
-  const int pixels = cell.width * cell.height;
-  if constexpr (std::is_same_v<C, std::int16_t>) {
-    whole_centre(cell.frames, pixels, static_cast<int>(centre), work);
-  } else {
-    for (int f = 0; f < cell.frames; ++f) {
-      double* d = work.centred[static_cast<std::size_t>(f)].data();
-      for (int p = 0; p < pixels; ++p) d[p] -= centre;
+double magnitude_of(const CellInput& cell, const Workspace<C>& work) {
+  C most = 0;
+  for (int f = 0; f < cell.frames; ++f)
+    for (int p = 0; p < cell.width * cell.height; ++p) {
+      const C d = work.centred[static_cast<std::size_t>(f)][static_cast<std::size_t>(p)];
+      const C size =
+          static_cast<C>(d < 0 ? -(d + 1) : d);  // -32768 has no opposite; one less is made good below
+      most = size > most ? size : most;
     }
-  }
+  return static_cast<double>(most) + 1;
 }
 
-/// How many pixels are `code`.
-template <class C>
-std::int64_t count_of(const CellInput& cell, double code, double centre, const Workspace<C>& work) {
-  const int pixels = cell.width * cell.height;
-  if constexpr (std::is_same_v<C, std::int16_t>) {
-    return whole_count(work, cell.frames, pixels, static_cast<std::int16_t>(code - centre));
-  } else {
-    std::int64_t total = 0;
-    for (int f = 0; f < cell.frames; ++f)
-      for (int p = 0; p < pixels; ++p)
-        total +=
-            work.centred[static_cast<std::size_t>(f)][static_cast<std::size_t>(p)] == code - centre ? 1 : 0;
-    return total;
-  }
+inline std::int64_t count_of(const CellInput& cell, const WholeWorkspace& work, double code) {
+  return whole_count(cell, work, static_cast<std::int16_t>(code));
+}
+inline std::int64_t count_of(const CellInput& cell, const RealWorkspace& work, double code) {
+  return real_count(cell, work, code);
 }
 
 /// An extreme that some other cell of the block is known to exceed is not worth counting.
-template <class C>
-void find_extremes(
-    const CellInput& cell, double low, double high, const Workspace<C>& work, CellStatistics& out) {
+template <class Work>
+void find_extremes(const CellInput& cell, double low, double high, const Work& work, CellStatistics& out) {
   out.lowest = {low, 0};
   out.highest = {high, 0};
-  if (!(low > cell.known_lowest)) out.lowest.count = count_of(cell, low, out.centre, work);
-  if (!(high < cell.known_highest)) out.highest.count = count_of(cell, high, out.centre, work);
+  if (!(low > cell.known_lowest)) out.lowest.count = count_of(cell, work, low - out.centre);
+  if (!(high < cell.known_highest)) out.highest.count = count_of(cell, work, high - out.centre);
 }
 
-inline double real_sum(const double* row, int width) {
-  double total = 0;
-  for (int x = 0; x < width; ++x) total += row[x];
-  return total;
-}
-
-inline double real_dot(const double* a, const double* b, int count) {
-  // Eight partial sums, in a fixed order, so that every instruction set gives the same bits.
-  double part[8] = {0, 0, 0, 0, 0, 0, 0, 0};
-  int i = 0;
-  for (; i + 8 <= count; i += 8)
-    for (int k = 0; k < 8; ++k) part[k] += a[i + k] * b[i + k];
-  for (int k = 0; i < count; ++i, ++k) part[k] += a[i] * b[i];
-  return ((part[0] + part[1]) + (part[2] + part[3])) + ((part[4] + part[5]) + (part[6] + part[7]));
-}
-
+/// Sums across frames, and hits set aside before. Nearly all cells end at the first question.
 template <class C>
-void sums_and_gram(const CellInput& cell, double magnitude, const Workspace<C>& work, CellStatistics& out) {
+void across_without_hits(
+    const CellInput& cell, bool whole_codes, double magnitude, Workspace<C>& work, CellStatistics& out) {
   const int pixels = cell.width * cell.height;
-  constexpr bool kIsWhole = std::is_same_v<C, std::int16_t>;
-  for (int f = 0; f < cell.frames; ++f) {
-    const C* row = work.centred[static_cast<std::size_t>(f)].data();
-    double* sums = out.row_sums.data() + f * kCellRows;
-    if constexpr (kIsWhole) {
-      std::int32_t whole[kCellRows];
-      whole_row_sums(row, cell.width, cell.height, magnitude, whole);
-      for (int y = 0; y < cell.height; ++y) sums[y] = whole[y];
-    } else {
-      for (int y = 0; y < cell.height; ++y, row += cell.width) sums[y] = real_sum(row, cell.width);
-    }
-    double total = 0;
-    for (int y = 0; y < cell.height; ++y) total += sums[y];
-    out.sums[static_cast<std::size_t>(f)] = total;
-  }
-  if constexpr (kIsWhole) {
-    std::int64_t gram[pair_count(kGroupFrames)];
-    whole_gram(work, cell.frames, padded(pixels), magnitude, gram);
-    for (std::size_t k = 0; k < pair_count(cell.frames); ++k) out.gram[k] = static_cast<double>(gram[k]);
-  } else {
-    for (int i = 0; i < cell.frames; ++i)
-      for (int j = i; j < cell.frames; ++j)
-        out.gram[pair_index(i, j, cell.frames)] =
-            real_dot(work.centred[static_cast<std::size_t>(i)].data(),
-                     work.centred[static_cast<std::size_t>(j)].data(), pixels);
-  }
-}
-
-/// No pixel stands out by more than the result, which is the largest range of any pixel over the frames of
-/// the group.
-template <class C>
-double deviation_range(const CellInput& cell, const Workspace<C>& work, const CellStatistics& s) {
-  const int pixels = cell.width * cell.height;
-  if constexpr (std::is_same_v<C, std::int16_t>) {
-    int mean[kGroupFrames];
-    for (int f = 0; f < cell.frames; ++f)
-      mean[f] = static_cast<int>(std::floor(s.sums[static_cast<std::size_t>(f)] / pixels + 0.5));
-    return whole_deviation_range(work, cell.frames, pixels, mean) + 1;  // what rounding the means can hide
-  } else {
-    double widest = 0;
-    for (int p = 0; p < pixels; ++p) {
-      double low = 0;
-      double high = 0;
-      for (int f = 0; f < cell.frames; ++f) {
-        const auto k = static_cast<std::size_t>(f);
-        const double e = work.centred[k][static_cast<std::size_t>(p)] - s.sums[k] / pixels;
-        low = f == 0 || e < low ? e : low;
-        high = f == 0 || e > high ? e : high;
-      }
-      widest = high - low > widest ? high - low : widest;
-    }
-    return widest;
-  }
-}
-
-/// Sets hits aside. Nearly all cells end at one of the first two questions.
-template <class C>
-void set_hits_aside(const CellInput& cell,
-                    bool whole_codes,
-                    double spread,
-                    double magnitude,
-                    Workspace<C>& work,
-                    CellStatistics& out) {
-  const int pixels = cell.width * cell.height;
-  // The variance that remains when as many pixels as may be hits owe the most that this range allows to the
-  // squares; the largest of clean pixels are trimmed too, which takes a quarter at most.
-  const auto least_limit = [&](double range) {
-    const double most = most_hits(pixels) * range * range * (cell.frames - 1) / cell.frames;
-    const double least = 0.7 * (temporal_squares(cell, out) - most) / (pixels * (cell.frames - 1.0));
-    return hit_limit(cell, whole_codes, least);
-  };
-  if (spread * (cell.frames - 1) <= least_limit(spread)) return;
+  const double frames = cell.frames;
+  double above_mean = across(cell, magnitude, work, out);
+  if (!(cell.hit_threshold > 0) || cell.frames < 2) return;
   constexpr int kRounds = 8;  // each finds what larger hits have hidden by shifting the frame means
   for (int round = 0; round < kRounds; ++round) {
-    const double range = deviation_range(cell, work, out);
-    if (range * (cell.frames - 1) <= least_limit(range)) return;
+    // The variance that remains when as many pixels as may be hits owe the most that this allows to the
+    // squares; the largest of clean pixels are trimmed too, which takes a quarter at most. A frame at the
+    // distance a above the mean of all frames adds a^2 F / (F - 1) to the squares.
+    const double most = most_hits(pixels) * above_mean * above_mean * frames / (frames - 1);
+    const double least = 0.7 * (temporal_squares(cell, out) - most) / (pixels * (frames - 1));
+    if (frames * above_mean <= hit_limit(cell, whole_codes, least)) return;
     if (replace_hits(cell, whole_codes, work, out) == 0) return;
-    sums_and_gram(cell, magnitude, work, out);
+    if constexpr (std::is_same_v<C, double>) real_sums(cell, work, out);  // rounding, where a hit was large
+    magnitude = magnitude_of(cell, work);
+    above_mean = across(cell, magnitude, work, out);
   }
 }
 
 template <class T>
-void add_to_totals(const CellInput& cell,
-                   double centre,
-                   double magnitude,
-                   const Workspace<Centred<T>>& work,
-                   CellTotals& totals) {
+auto* totals_of(CellTotals& totals) {
+  if constexpr (kShort<T>)
+    return totals.whole.data();
+  else
+    return totals.real.data();
+}
+
+template <class T>
+void add_to_totals(
+    const CellInput& cell, double centre, double magnitude, const T* total, auto* into, CellTotals& totals) {
   const int pixels = cell.width * cell.height;
   if (cell.first_group) {
     totals.centre = centre;
@@ -217,77 +138,148 @@ void add_to_totals(const CellInput& cell,
   }
   const double shift = cell.frames * (centre - totals.centre);
   totals.magnitude += cell.frames * magnitude + std::fabs(shift);
-  if constexpr (kWhole<T>) {
-    whole_add(work, cell.frames, pixels, magnitude, cell.first_group, static_cast<int>(shift),
-              totals.whole.data());
-  } else {
-    for (int f = 0; f < cell.frames; ++f) {
-      const double* d = work.centred[static_cast<std::size_t>(f)].data();
-      double* total = totals.real.data();
-      if (f == 0 && cell.first_group)
-        for (int p = 0; p < pixels; ++p) total[p] = d[p];
-      else if (f == 0)
-        for (int p = 0; p < pixels; ++p) total[p] += d[p] + shift;
-      else
-        for (int p = 0; p < pixels; ++p) total[p] += d[p];
+  using Into = std::remove_reference_t<decltype(*into)>;
+  const auto add = static_cast<Into>(shift);
+  if (cell.first_group)
+    for (int p = 0; p < pixels; ++p) into[p] = static_cast<Into>(total[p]);
+  else
+    for (int p = 0; p < pixels; ++p) into[p] += static_cast<Into>(total[p]) + add;
+}
+
+/// Column sums and the sum of all; sums of whole numbers are exact.
+template <class T>
+void sum_columns(const CellInput& cell, const T* total, CellSquares& out) {
+  using Sum = std::conditional_t<std::is_same_v<T, double>, double, std::int32_t>;
+  constexpr int kTogether = 32;  // as many columns as registers hold
+  double* columns = out.column_sums.data();
+  int x = 0;
+  for (; x + kTogether <= cell.width; x += kTogether) {
+    Sum sum[kTogether] = {};
+    for (int y = 0; y < cell.height; ++y)
+      for (int k = 0; k < kTogether; ++k) sum[k] += total[y * cell.width + x + k];
+    for (int k = 0; k < kTogether; ++k) columns[x + k] = static_cast<double>(sum[k]);
+  }
+  for (; x < cell.width; ++x) {
+    Sum sum = 0;
+    for (int y = 0; y < cell.height; ++y) sum += total[y * cell.width + x];
+    columns[x] = static_cast<double>(sum);
+  }
+  out.sum = real_sum(columns, cell.width);
+}
+
+/// Totals of whole numbers are whole numbers below 2^28: 512 frames of 8 rows fit 32 bits in a column. More
+/// frames and sums of real pixels go by doubles.
+template <class T>
+void square_totals(const CellInput& cell, const CellTotals& totals, CellSquares& out) {
+  const int pixels = cell.width * cell.height;
+  out.centre = totals.centre;
+  if constexpr (kShort<T>) {
+    constexpr double kSquaresInWholes = 67108864.0;  // 2^26: 1024 squares of it fit 63 bits
+    if (totals.magnitude < kSquaresInWholes) {
+      sum_columns(cell, totals.whole.data(), out);
+      out.square = static_cast<double>(whole_square(totals.whole.data(), pixels));
+      return;
     }
+    double real[kCellPixels] = {};
+    for (int p = 0; p < pixels; ++p) real[p] = totals.whole[static_cast<std::size_t>(p)];
+    sum_columns(cell, real, out);
+    out.square = real_dot(real, real, pixels);
+  } else {
+    sum_columns(cell, totals.real.data(), out);
+    out.square = real_dot(totals.real.data(), totals.real.data(), pixels);
   }
 }
 
+/// The end of a group, whole or real.
+template <class T, class Work>
+void finish_group(const CellInput& cell,
+                  double magnitude,
+                  const Work& work,
+                  CellTotals& totals,
+                  CellStatistics& out,
+                  CellSquares& squares) {
+  if (cell.first_group && cell.last_group) {
+    sum_columns(cell, work.total.data(), squares);
+    squares.centre = out.centre;
+    squares.square = 0;
+    for (int f = 0; f < cell.frames; ++f) squares.square += out.with_total[static_cast<std::size_t>(f)];
+    return;
+  }
+  add_to_totals(cell, out.centre, magnitude, work.total.data(), totals_of<T>(totals), totals);
+  if (cell.last_group) square_totals<T>(cell, totals, squares);
+}
+
+/// False if the cell holds other than whole numbers that fit 16 bits once centred: nothing is valid then.
 template <class T>
-void measure_cell(const CellInput& cell, CellTotals& totals, CellStatistics& out) {
-  static thread_local Workspace<Centred<T>> work;
+bool measure_whole(const CellInput& cell,
+                   CellTotals& totals,
+                   WholeWorkspace& work,
+                   CellStatistics& out,
+                   CellSquares& squares) {
+  std::int64_t centre = 0;
+  if (!sample_centre<T>(cell, centre)) return false;
+  WholeSums sums;
+  WholeRange range = whole_gather<T>(cell, centre, work, sums);
+  if (!range.whole) return false;
+  if (!fits_short(range, centre)) {
+    centre = (range.low + range.high + 1) >> 1;
+    if (!fits_short(range, centre)) return false;
+    range = whole_gather<T>(cell, centre, work, sums);
+  }
+  const auto up = static_cast<double>(range.high - centre);
+  const auto down = static_cast<double>(centre - range.low);
+  const double magnitude = up > down ? up : down;
+  if (magnitude > kNarrow) wide_sums(cell, work, sums);
+  out.centre = static_cast<double>(centre);
+  out.bits = range.bits;
+  put_sums(cell, sums, out);
+  find_extremes(cell, static_cast<double>(range.low), static_cast<double>(range.high), work, out);
+  across_without_hits(cell, true, magnitude, work, out);
+  if (cell.first_group && cell.frames > 1) out.neighbours = whole_neighbours(cell, magnitude, out, work);
+  finish_group<T>(cell, magnitude, work, totals, out, squares);
+  return true;
+}
+
+template <class T>
+void measure_real(const CellInput& cell,
+                  CellTotals& totals,
+                  RealWorkspace& work,
+                  CellStatistics& out,
+                  CellSquares& squares) {
+  // A whole number as centre leaves whole codes whole.
+  const auto first = static_cast<double>(*row_of<T>(cell, 0, 0));
+  out.centre = std::isfinite(first) ? std::floor(first) : 0.0;
+  RealRange range;
+  if (!real_gather<T>(cell, out.centre, work, range)) {
+    out.bad_frame = frame_not_finite<T>(cell);
+    return;
+  }
+  const double up = range.high - out.centre;
+  const double down = out.centre - range.low;
+  out.bits = {};
+  real_sums(cell, work, out);
+  find_extremes(cell, range.low, range.high, work, out);
+  const double magnitude = up > down ? up : down;
+  across_without_hits(cell, holds_whole_codes<T>(cell), magnitude, work, out);
+  if (cell.first_group && cell.frames > 1) out.neighbours = real_neighbours(cell, out, work);
+  finish_group<T>(cell, magnitude, work, totals, out, squares);
+}
+
+/// A cell is measured in one of the two.
+union CellWorkspace {
+  WholeWorkspace whole;
+  RealWorkspace real;
+};
+
+template <class T>
+void measure_cell(
+    const CellInput& cell, CellTotals& totals, void* workspace, CellStatistics& out, CellSquares& squares) {
   out.hits.fill(0);
   out.bad_frame = -1;
-  if constexpr (std::is_floating_point_v<T>) {
-    out.bad_frame = frame_not_finite<T>(cell);
-    if (out.bad_frame >= 0) return;
-  }
-  const Range<T> range = gather<T>(cell, work);
-  const auto low = static_cast<double>(range.low);
-  const auto high = static_cast<double>(range.high);
-  out.centre = centre_of(range);
-  centre_pixels(cell, out.centre, work);
-  find_extremes(cell, low, high, work, out);
-  const double up = high - out.centre;
-  const double down = out.centre - low;
-  const double magnitude = up > down ? up : down;
-  sums_and_gram(cell, magnitude, work, out);
-  if (cell.hit_threshold > 0 && cell.frames > 1)
-    set_hits_aside(cell, holds_whole_codes<T>(cell), up + down, magnitude, work, out);
-  add_to_totals<T>(cell, out.centre, magnitude, work, totals);
-}
-
-template <class T>
-void square_totals(const CellTotals& totals, int width, int height, CellSquares& out) {
-  out.square = 0;
-  out.sum = 0;
-  if constexpr (kWhole<T>) {
-    constexpr double kSquaresInWholes = 67108864.0;  // 2^26: 2048 squares of it fit 63 bits
-    std::array<std::int64_t, kCellColumns> columns{};
-    for (int y = 0; y < height; ++y) {
-      const std::int32_t* row = totals.whole.data() + y * width;
-      for (int x = 0; x < width; ++x) columns[static_cast<std::size_t>(x)] += row[x];
-    }
-    for (int x = 0; x < width; ++x) {
-      out.column_sums[static_cast<std::size_t>(x)] =
-          static_cast<double>(columns[static_cast<std::size_t>(x)]);
-      out.sum += static_cast<double>(columns[static_cast<std::size_t>(x)]);
-    }
-    if (totals.magnitude < kSquaresInWholes) {
-      out.square = static_cast<double>(whole_square(totals.whole.data(), width * height));
-    } else {
-      for (int p = 0; p < width * height; ++p)
-        out.square += static_cast<double>(totals.whole[static_cast<std::size_t>(p)]) *
-                      totals.whole[static_cast<std::size_t>(p)];
-    }
-  } else {
-    out.column_sums.fill(0);
-    for (int y = 0; y < height; ++y)
-      for (int x = 0; x < width; ++x)
-        out.column_sums[static_cast<std::size_t>(x)] += totals.real[static_cast<std::size_t>(y * width + x)];
-    for (int x = 0; x < width; ++x) out.sum += out.column_sums[static_cast<std::size_t>(x)];
-    out.square = real_dot(totals.real.data(), totals.real.data(), width * height);
+  out.neighbours = {};
+  auto* work = static_cast<CellWorkspace*>(workspace);
+  if (!measure_whole<T>(cell, totals, work->whole, out, squares)) {
+    if constexpr (!kShort<T>) measure_real<T>(cell, totals, work->real, out, squares);
   }
 }
 
@@ -301,7 +293,8 @@ inline std::array<std::uint64_t, 2> hash_row(const void* row, std::size_t bytes,
 }
 
 template <class T>
-constexpr CellKernels kKernels{measure_cell<T>, square_totals<T>, hash_row};
+constexpr CellKernels kKernels{measure_cell<T>, kShort<T> ? sizeof(WholeWorkspace) : sizeof(CellWorkspace),
+                               hash_row};
 
 inline CellKernels kernels_for(PixelType type) {
   switch (type) {

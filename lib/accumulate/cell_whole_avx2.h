@@ -1,291 +1,382 @@
 #pragma once
-// Loops over integers of up to 16 bits, sixteen at a time. Part of cell_kernel_loops.h; see there. The same
-// functions as in cell_whole_portable.h, where they are described.
+// Loops over whole numbers that fit 16 bits once centred, sixteen at a time. Part of cell_kernel_loops.h; see
+// there. The same functions as in cell_whole_portable.h, where they are described.
 #include <immintrin.h>
 
-#include "accumulate/cell_workspace.h"
+#include "accumulate/cell_whole_wide.h"
 
 namespace {
 
 inline constexpr int kLane = 16;
 
-inline __m256i load(const std::int16_t* p) { return _mm256_load_si256(reinterpret_cast<const __m256i*>(p)); }
-
-/// Sixteen pixels as 16 bit numbers; unsigned ones of 16 bits keep their bits.
-template <class T>
-__m256i widened(const T* p) {
-  if constexpr (sizeof(T) == 2) {
-    return _mm256_loadu_si256(reinterpret_cast<const __m256i*>(p));
-  } else {
-    const __m128i bytes = _mm_loadu_si128(reinterpret_cast<const __m128i*>(p));
-    return std::is_signed_v<T> ? _mm256_cvtepi8_epi16(bytes) : _mm256_cvtepu8_epi16(bytes);
-  }
-}
-
-template <class T>
-constexpr bool kUnsigned16 = std::is_same_v<T, std::uint16_t>;
+inline __m256i load(const void* p) { return _mm256_loadu_si256(static_cast<const __m256i*>(p)); }
+inline void store(void* p, __m256i v) { _mm256_storeu_si256(static_cast<__m256i*>(p), v); }
 
 inline std::int64_t sum_of_32(__m256i v) {
   const __m256i wide = _mm256_add_epi64(_mm256_cvtepi32_epi64(_mm256_castsi256_si128(v)),
                                         _mm256_cvtepi32_epi64(_mm256_extracti128_si256(v, 1)));
-  alignas(32) std::int64_t part[4];
-  _mm256_store_si256(reinterpret_cast<__m256i*>(part), wide);
-  return part[0] + part[1] + part[2] + part[3];
+  const __m128i two = _mm_add_epi64(_mm256_castsi256_si128(wide), _mm256_extracti128_si256(wide, 1));
+  return _mm_cvtsi128_si64(two) + _mm_extract_epi64(two, 1);
+}
+
+/// All ones in the first `count` lanes of 16 bits.
+inline __m256i first_16(int count) {
+  alignas(32) static constexpr std::int16_t kOnes[2 * kLane] = {-1, -1, -1, -1, -1, -1, -1, -1,
+                                                                -1, -1, -1, -1, -1, -1, -1, -1};
+  return load(kOnes + kLane - count);
+}
+
+/// All ones in the first `count` lanes of 32 bits, as many as there are; none if it is negative.
+inline __m256i first_32(int count) {
+  alignas(32) static constexpr std::int32_t kOnes[16] = {-1, -1, -1, -1, -1, -1, -1, -1};
+  return load(kOnes + 8 - (count < 0 ? 0 : count > 8 ? 8 : count));
+}
+
+/// Codes of up to 16 bits, sixteen at a time, in lanes of 16; unsigned ones of 16 bits keep their bits.
+template <class T>
+struct ShortCodes {
+  static constexpr bool kUnsigned16 = std::is_same_v<T, std::uint16_t>;
+  __m256i first, low, high, any, all, shift;
+
+  ShortCodes(T first_code, std::int64_t centre)
+      : first(_mm256_set1_epi16(static_cast<std::int16_t>(first_code))),
+        low(first),
+        high(first),
+        any(first),
+        all(first),
+        shift(_mm256_set1_epi16(static_cast<std::int16_t>(centre))) {}
+
+  static __m256i codes(const T* p) {
+    if constexpr (sizeof(T) == 2) {
+      return load(p);
+    } else {
+      const __m128i bytes = _mm_loadu_si128(reinterpret_cast<const __m128i*>(p));
+      return std::is_signed_v<T> ? _mm256_cvtepi8_epi16(bytes) : _mm256_cvtepu8_epi16(bytes);
+    }
+  }
+  __m256i look(__m256i v) {
+    low = kUnsigned16 ? _mm256_min_epu16(low, v) : _mm256_min_epi16(low, v);
+    high = kUnsigned16 ? _mm256_max_epu16(high, v) : _mm256_max_epi16(high, v);
+    any = _mm256_or_si256(any, v);
+    all = _mm256_and_si256(all, v);
+    return _mm256_sub_epi16(v, shift);
+  }
+  __m256i take(const T* p) { return look(codes(p)); }
+  /// The first `count` of sixteen; zeros for the others.
+  __m256i take_some(const T* p, int count) {
+    const __m256i mask = first_16(count);
+    return _mm256_and_si256(look(_mm256_blendv_epi8(first, codes(p), mask)), mask);
+  }
+  void finish(WholeRange& out) const {
+    using Wide = std::conditional_t<kUnsigned16, std::uint16_t, std::int16_t>;
+    Wide lows[kLane], highs[kLane], anys[kLane], alls[kLane];
+    store(lows, low);
+    store(highs, high);
+    store(anys, any);
+    store(alls, all);
+    out.low = lows[0];
+    out.high = highs[0];
+    out.bits = {true, 0, ~std::uint64_t{0}};
+    for (int i = 0; i < kLane; ++i) {
+      out.low = lows[i] < out.low ? lows[i] : out.low;
+      out.high = highs[i] > out.high ? highs[i] : out.high;
+      out.bits.any |= static_cast<std::uint64_t>(std::int64_t{anys[i]});
+      out.bits.all &= static_cast<std::uint64_t>(std::int64_t{alls[i]});
+    }
+  }
+};
+
+/// Codes of 32 bits, or floating-point numbers that are whole, eight at a time.
+template <class T>
+struct LongCodes {
+  static constexpr bool kUnsigned32 = std::is_same_v<T, std::uint32_t>;
+  __m256i first, low, high, any, all, shift, whole;
+
+  LongCodes(T first_code, std::int64_t centre) {
+    std::int64_t code = 0;
+    const bool is_whole = whole_number(first_code, code);
+    first = _mm256_set1_epi32(static_cast<std::int32_t>(code));
+    low = high = any = all = first;
+    shift = _mm256_set1_epi32(static_cast<std::int32_t>(centre));
+    whole = _mm256_set1_epi32(is_whole ? -1 : 0);
+  }
+
+  /// What is not a whole number of 32 bits comes back from its conversion as something else.
+  __m256i codes(const T* p, __m256i mask) {
+    if constexpr (std::is_same_v<T, float>) {
+      const __m256 v = _mm256_loadu_ps(p);
+      const __m256i codes = _mm256_cvtps_epi32(v);
+      const __m256 same = _mm256_cmp_ps(v, _mm256_cvtepi32_ps(codes), _CMP_EQ_OQ);
+      // 2147483648 saturates to a code that is converted to the number itself with the other sign: unequal.
+      whole = _mm256_and_si256(whole, _mm256_or_si256(_mm256_castps_si256(same), ~mask));
+      return codes;
+    } else if constexpr (std::is_same_v<T, double>) {
+      const __m256d a = _mm256_loadu_pd(p);
+      const __m256d b = _mm256_loadu_pd(p + 4);
+      const __m128i x = _mm256_cvtpd_epi32(a);
+      const __m128i y = _mm256_cvtpd_epi32(b);
+      const __m256i same_a = _mm256_castpd_si256(_mm256_cmp_pd(a, _mm256_cvtepi32_pd(x), _CMP_EQ_OQ));
+      const __m256i same_b = _mm256_castpd_si256(_mm256_cmp_pd(b, _mm256_cvtepi32_pd(y), _CMP_EQ_OQ));
+      const __m256i same = _mm256_permute4x64_epi64(_mm256_packs_epi32(same_a, same_b), 0xD8);
+      whole = _mm256_and_si256(whole, _mm256_or_si256(same, ~mask));
+      return _mm256_set_m128i(y, x);
+    } else {
+      return load(p);
+    }
+  }
+  __m256i look(__m256i v) {
+    low = kUnsigned32 ? _mm256_min_epu32(low, v) : _mm256_min_epi32(low, v);
+    high = kUnsigned32 ? _mm256_max_epu32(high, v) : _mm256_max_epi32(high, v);
+    any = _mm256_or_si256(any, v);
+    all = _mm256_and_si256(all, v);
+    return _mm256_sub_epi32(v, shift);
+  }
+  __m256i take(const T* p) {
+    const __m256i every = _mm256_set1_epi32(-1);
+    const __m256i a = look(codes(p, every));
+    const __m256i b = look(codes(p + 8, every));
+    return _mm256_permute4x64_epi64(_mm256_packs_epi32(a, b), 0xD8);
+  }
+  __m256i take_some(const T* p, int count) {
+    const __m256i mask_a = first_32(count);
+    const __m256i mask_b = first_32(count - 8);
+    const __m256i a = look(_mm256_blendv_epi8(first, codes(p, mask_a), mask_a));
+    const __m256i b =
+        count > 8 ? look(_mm256_blendv_epi8(first, codes(p + 8, mask_b), mask_b)) : _mm256_setzero_si256();
+    return _mm256_and_si256(_mm256_permute4x64_epi64(_mm256_packs_epi32(a, b), 0xD8), first_16(count));
+  }
+  void finish(WholeRange& out) const {
+    using Wide = std::conditional_t<kUnsigned32, std::uint32_t, std::int32_t>;
+    Wide lows[8], highs[8], anys[8], alls[8];
+    store(lows, low);
+    store(highs, high);
+    store(anys, any);
+    store(alls, all);
+    out.low = lows[0];
+    out.high = highs[0];
+    out.bits = {true, 0, ~std::uint64_t{0}};
+    for (int i = 0; i < 8; ++i) {
+      out.low = lows[i] < out.low ? lows[i] : out.low;
+      out.high = highs[i] > out.high ? highs[i] : out.high;
+      out.bits.any |= static_cast<std::uint64_t>(std::int64_t{anys[i]});
+      out.bits.all &= static_cast<std::uint64_t>(std::int64_t{alls[i]});
+    }
+    out.whole = _mm256_movemask_epi8(whole) == -1;
+  }
+};
+
+/// Sums of eight vectors, in its eight lanes.
+inline __m256i sums_of_eight(const __m256i* v) {
+  const __m256i first = _mm256_hadd_epi32(_mm256_hadd_epi32(v[0], v[1]), _mm256_hadd_epi32(v[2], v[3]));
+  const __m256i last = _mm256_hadd_epi32(_mm256_hadd_epi32(v[4], v[5]), _mm256_hadd_epi32(v[6], v[7]));
+  return _mm256_add_epi32(_mm256_permute2x128_si256(first, last, 0x20),
+                          _mm256_permute2x128_si256(first, last, 0x31));
 }
 
 template <class T>
-Range<T> whole_gather(const CellInput& cell, Workspace<std::int16_t>& work) {
-  Range<T> range{*row_of<T>(cell, 0, 0), *row_of<T>(cell, 0, 0)};
+WholeRange whole_gather(const CellInput& cell, std::int64_t centre, WholeWorkspace& work, WholeSums& sums) {
+  using Codes = std::conditional_t<kShort<T>, ShortCodes<T>, LongCodes<T>>;
+  Codes codes(*row_of<T>(cell, 0, 0), centre);
   const int vectors = cell.width / kLane * kLane;
-  __m256i low = _mm256_set1_epi16(static_cast<std::int16_t>(range.low));
-  __m256i high = low;
+  const int rest = cell.width - vectors;
+  const __m256i ones = _mm256_set1_epi16(1);
+  static_assert(kCellRows == 16, "the rows of a frame end in the eight lanes of two vectors");
   for (int f = 0; f < cell.frames; ++f) {
     std::int16_t* to = work.centred[static_cast<std::size_t>(f)].data();
+    __m256i squares = _mm256_setzero_si256();
+    __m256i rows[kCellRows];
     for (int y = 0; y < cell.height; ++y, to += cell.width) {
       const T* row = row_of<T>(cell, f, y);
-      for (int x = 0; x < vectors; x += kLane) {
-        const __m256i v = widened(row + x);
-        low = kUnsigned16<T> ? _mm256_min_epu16(low, v) : _mm256_min_epi16(low, v);
-        high = kUnsigned16<T> ? _mm256_max_epu16(high, v) : _mm256_max_epi16(high, v);
-        _mm256_storeu_si256(reinterpret_cast<__m256i*>(to + x), v);
-      }
-      for (int x = vectors; x < cell.width; ++x) {
-        range.low = row[x] < range.low ? row[x] : range.low;
-        range.high = row[x] > range.high ? row[x] : range.high;
-        to[x] = static_cast<std::int16_t>(row[x]);
-      }
+      __m256i sum = _mm256_setzero_si256();  // eight vectors of kNarrow fit 16 bits
+      const auto add = [&](int x, __m256i d) {
+        store(to + x, d);  // what is behind the row is overwritten by the next one
+        sum = _mm256_add_epi16(sum, d);
+        squares = _mm256_add_epi32(squares, _mm256_madd_epi16(d, d));
+      };
+      for (int x = 0; x < vectors; x += kLane) add(x, codes.take(row + x));
+      if (rest > 0) add(vectors, codes.take_some(row + vectors, rest));
+      rows[y] = _mm256_madd_epi16(sum, ones);
     }
+    for (int y = cell.height; y % 8 != 0; ++y) rows[y] = _mm256_setzero_si256();
+    store(to, _mm256_setzero_si256());
+    store(to + kLane, _mm256_setzero_si256());
+    store(sums.rows[f], sums_of_eight(rows));
+    if (cell.height > 8) store(sums.rows[f] + 8, sums_of_eight(rows + 8));
+    sums.squares[f] = sum_of_32(squares);
   }
-  using Wide = std::conditional_t<kUnsigned16<T>, std::uint16_t, std::int16_t>;
-  alignas(32) Wide lows[kLane];
-  alignas(32) Wide highs[kLane];
-  _mm256_store_si256(reinterpret_cast<__m256i*>(lows), low);
-  _mm256_store_si256(reinterpret_cast<__m256i*>(highs), high);
-  for (int i = 0; i < kLane; ++i) {
-    range.low = static_cast<T>(lows[i]) < range.low ? static_cast<T>(lows[i]) : range.low;
-    range.high = static_cast<T>(highs[i]) > range.high ? static_cast<T>(highs[i]) : range.high;
-  }
+  WholeRange range;
+  codes.finish(range);
   return range;
 }
 
-inline void whole_centre(int frames, int pixels, int centre, Workspace<std::int16_t>& work) {
-  const __m256i shifts = _mm256_set1_epi16(static_cast<std::int16_t>(centre));
-  for (int f = 0; f < frames; ++f) {
-    std::int16_t* d = work.centred[static_cast<std::size_t>(f)].data();
-    for (int p = 0; p < padded(pixels); p += kLane)
-      _mm256_store_si256(reinterpret_cast<__m256i*>(d + p), _mm256_sub_epi16(load(d + p), shifts));
-    for (int p = pixels; p < padded(pixels); ++p) d[p] = 0;
+/// Sixteen lanes of 16 bits as two times eight of 32.
+struct Halves {
+  __m256i first, second;
+};
+inline Halves halves(__m256i v) {
+  return {_mm256_cvtepi16_epi32(_mm256_castsi256_si128(v)),
+          _mm256_cvtepi16_epi32(_mm256_extracti128_si256(v, 1))};
+}
+/// The opposite, where the lanes fit.
+inline __m256i joined(Halves h) {
+  return _mm256_permute4x64_epi64(_mm256_packs_epi32(h.first, h.second), 0xD8);
+}
+
+inline const std::int16_t* frame_of(const WholeWorkspace& work, int f) {
+  return work.centred[static_cast<std::size_t>(f)].data();
+}
+
+/// No centred pixel exceeds kNarrow: totals fit 16 bits, and products run for at least eight vectors in 32.
+template <int kFrames>
+void across_narrow(
+    const CellInput& cell, const int* mean, int magnitude, WholeWorkspace& work, WholeAcross& out) {
+  const int pixels = cell.width * cell.height;
+  const int vectors = pixels / kLane * kLane;
+  const double product = magnitude < 1 ? 1.0 : static_cast<double>(kFrames) * magnitude * magnitude;
+  const double longest = 2147483647.0 / (2 * product);
+  const int run = (longest < 64 ? static_cast<int>(longest) : 64) * kLane;
+  const __m256i share = _mm256_set1_epi16(static_cast<std::int16_t>(narrow_share(kFrames)));
+  __m256i means[kFrames];
+  int sum_of_means = 0;
+  for (int f = 0; f < kFrames; ++f) {
+    means[f] = _mm256_set1_epi16(static_cast<std::int16_t>(mean[f]));
+    sum_of_means += mean[f];
+    out.with_total[f] = 0;
+  }
+  __m256i widest = _mm256_set1_epi16(-32768);
+  __m256i sum[kFrames];
+  const auto look = [&](int p, auto masked) {
+    __m256i total = load(frame_of(work, 0) + p);
+    __m256i high = _mm256_sub_epi16(total, means[0]);
+    for (int f = 1; f < kFrames; ++f) {
+      const __m256i d = load(frame_of(work, f) + p);
+      total = _mm256_add_epi16(total, d);
+      high = _mm256_max_epi16(high, _mm256_sub_epi16(d, means[f]));
+    }
+    const __m256i above = _mm256_sub_epi16(high, _mm256_mulhrs_epi16(total, share));
+    if constexpr (masked)
+      widest = _mm256_max_epi16(
+          widest, _mm256_blendv_epi8(_mm256_set1_epi16(-32768), above, first_16(pixels - vectors)));
+    else
+      widest = _mm256_max_epi16(widest, above);
+    const Halves wide = halves(total);
+    store(work.total.data() + p, wide.first);
+    store(work.total.data() + p + 8, wide.second);
+    for (int f = 0; f < kFrames; ++f)
+      sum[f] = _mm256_add_epi32(sum[f], _mm256_madd_epi16(total, load(frame_of(work, f) + p)));
+  };
+  for (int begin = 0; begin < pixels; begin += run) {
+    const int end = begin + run < vectors ? begin + run : vectors;
+    for (__m256i& s : sum) s = _mm256_setzero_si256();
+    for (int p = begin; p < end; p += kLane) look(p, std::false_type{});
+    if (begin + run >= pixels && vectors < pixels) look(vectors, std::true_type{});
+    for (int f = 0; f < kFrames; ++f) out.with_total[f] += sum_of_32(sum[f]);
+  }
+  std::int16_t lanes[kLane];
+  store(lanes, widest);
+  int most = lanes[0];
+  for (const std::int16_t lane : lanes) most = lane > most ? lane : most;
+  out.above_mean = narrow_above(most, sum_of_means, kFrames);
+}
+
+/// Any magnitude: totals have 19 bits, and are multiplied in two parts.
+template <int kFrames>
+void across_any(const CellInput& cell, const int* mean, WholeWorkspace& work, WholeAcross& out) {
+  const int pixels = cell.width * cell.height;
+  constexpr int kRun = 16 * kLane;  // products with the upper part fit 27 bits
+  __m256i means[kFrames];
+  int sum_of_means = 0;
+  for (int f = 0; f < kFrames; ++f) {
+    means[f] = _mm256_set1_epi32(mean[f]);
+    sum_of_means += mean[f];
+    out.with_total[f] = 0;
+  }
+  const __m256i low_bits = _mm256_set1_epi32(255);
+  const __m256i frames = _mm256_set1_epi32(kFrames);
+  __m256i widest = _mm256_set1_epi32(-0x7fffffff);
+  for (int begin = 0; begin < pixels; begin += kRun) {
+    __m256i upper[kFrames];
+    __m256i lower[kFrames];
+    for (int f = 0; f < kFrames; ++f) upper[f] = lower[f] = _mm256_setzero_si256();
+    for (int p = begin; p < pixels && p < begin + kRun; p += kLane) {
+      Halves total = halves(load(frame_of(work, 0) + p));
+      Halves high{_mm256_sub_epi32(total.first, means[0]), _mm256_sub_epi32(total.second, means[0])};
+      for (int f = 1; f < kFrames; ++f) {
+        const Halves d = halves(load(frame_of(work, f) + p));
+        total = {_mm256_add_epi32(total.first, d.first), _mm256_add_epi32(total.second, d.second)};
+        high = {_mm256_max_epi32(high.first, _mm256_sub_epi32(d.first, means[f])),
+                _mm256_max_epi32(high.second, _mm256_sub_epi32(d.second, means[f]))};
+      }
+      store(work.total.data() + p, total.first);
+      store(work.total.data() + p + 8, total.second);
+      const __m256i none = _mm256_set1_epi32(-0x7fffffff);
+      const __m256i first = _mm256_sub_epi32(_mm256_mullo_epi32(high.first, frames), total.first);
+      const __m256i second = _mm256_sub_epi32(_mm256_mullo_epi32(high.second, frames), total.second);
+      widest = _mm256_max_epi32(widest, _mm256_blendv_epi8(none, first, first_32(pixels - p)));
+      widest = _mm256_max_epi32(widest, _mm256_blendv_epi8(none, second, first_32(pixels - p - 8)));
+      const __m256i top = joined({_mm256_srai_epi32(total.first, 8), _mm256_srai_epi32(total.second, 8)});
+      const __m256i rest =
+          joined({_mm256_and_si256(total.first, low_bits), _mm256_and_si256(total.second, low_bits)});
+      for (int f = 0; f < kFrames; ++f) {
+        const __m256i d = load(frame_of(work, f) + p);
+        upper[f] = _mm256_add_epi32(upper[f], _mm256_madd_epi16(d, top));
+        lower[f] = _mm256_add_epi32(lower[f], _mm256_madd_epi16(d, rest));
+      }
+    }
+    for (int f = 0; f < kFrames; ++f) out.with_total[f] += 256 * sum_of_32(upper[f]) + sum_of_32(lower[f]);
+  }
+  std::int32_t lanes[8];
+  store(lanes, widest);
+  int most = lanes[0];
+  for (const std::int32_t lane : lanes) most = lane > most ? lane : most;
+  out.above_mean = static_cast<double>(most + sum_of_means) / kFrames + kHiddenWide;
+}
+
+template <int kFrames>
+void across_frames(
+    const CellInput& cell, const int* mean, int magnitude, WholeWorkspace& work, WholeAcross& out) {
+  if (magnitude <= kNarrow)
+    across_narrow<kFrames>(cell, mean, magnitude, work, out);
+  else
+    across_any<kFrames>(cell, mean, work, out);
+}
+
+inline void whole_across(
+    const CellInput& cell, const int* mean, int magnitude, WholeWorkspace& work, WholeAcross& out) {
+  static_assert(kGroupFrames == 8);
+  switch (cell.frames) {
+    case 1:
+      return across_frames<1>(cell, mean, magnitude, work, out);
+    case 2:
+      return across_frames<2>(cell, mean, magnitude, work, out);
+    case 3:
+      return across_frames<3>(cell, mean, magnitude, work, out);
+    case 4:
+      return across_frames<4>(cell, mean, magnitude, work, out);
+    case 5:
+      return across_frames<5>(cell, mean, magnitude, work, out);
+    case 6:
+      return across_frames<6>(cell, mean, magnitude, work, out);
+    case 7:
+      return across_frames<7>(cell, mean, magnitude, work, out);
+    default:
+      return across_frames<8>(cell, mean, magnitude, work, out);
   }
 }
 
-inline std::int64_t whole_count(const Workspace<std::int16_t>& work,
-                                int frames,
-                                int pixels,
-                                std::int16_t code) {
-  const __m256i codes = _mm256_set1_epi16(code);
+inline std::int64_t whole_count(const CellInput& cell, const WholeWorkspace& work, std::int16_t code) {
+  const int pixels = cell.width * cell.height;
   const int vectors = pixels / kLane * kLane;
+  const __m256i codes = _mm256_set1_epi16(code);
+  __m256i count = _mm256_setzero_si256();  // a lane counts at most 512
   std::int64_t total = 0;
-  for (int f = 0; f < frames; ++f) {
+  for (int f = 0; f < cell.frames; ++f) {
     const std::int16_t* d = work.centred[static_cast<std::size_t>(f)].data();
-    __m256i count = _mm256_setzero_si256();  // a lane counts at most 128
     for (int p = 0; p < vectors; p += kLane)
       count = _mm256_sub_epi16(count, _mm256_cmpeq_epi16(load(d + p), codes));
-    total += sum_of_32(_mm256_madd_epi16(count, _mm256_set1_epi16(1)));
     for (int p = vectors; p < pixels; ++p) total += d[p] == code ? 1 : 0;
   }
-  return total;
-}
-
-/// A row of whole vectors, summed into eight lanes of 32 bits. `narrow`: eight vectors fit 16 bit lanes.
-inline __m256i row_lanes(const std::int16_t* row, int width, bool narrow) {
-  const __m256i ones = _mm256_set1_epi16(1);
-  const auto vector = [row](int x) { return _mm256_loadu_si256(reinterpret_cast<const __m256i*>(row + x)); };
-  if (narrow) {
-    __m256i sum = vector(0);
-    for (int x = kLane; x < width; x += kLane) sum = _mm256_add_epi16(sum, vector(x));
-    return _mm256_madd_epi16(sum, ones);
-  }
-  __m256i sum = _mm256_madd_epi16(vector(0), ones);
-  for (int x = kLane; x < width; x += kLane) sum = _mm256_add_epi32(sum, _mm256_madd_epi16(vector(x), ones));
-  return sum;
-}
-
-inline void whole_row_sums(
-    const std::int16_t* d, int width, int height, double magnitude, std::int32_t* sums) {
-  int y = 0;
-  if (width % kLane == 0) {
-    const bool narrow = magnitude * (width / kLane) <= 32767;
-    constexpr int kTogether = 8;  // eight rows end in the eight lanes of one vector
-    for (; y + kTogether <= height; y += kTogether, d += kTogether * width) {
-      __m256i lanes[kTogether];
-      for (int k = 0; k < kTogether; ++k) lanes[k] = row_lanes(d + k * width, width, narrow);
-      const __m256i first =
-          _mm256_hadd_epi32(_mm256_hadd_epi32(lanes[0], lanes[1]), _mm256_hadd_epi32(lanes[2], lanes[3]));
-      const __m256i last =
-          _mm256_hadd_epi32(_mm256_hadd_epi32(lanes[4], lanes[5]), _mm256_hadd_epi32(lanes[6], lanes[7]));
-      const __m256i lower = _mm256_permute2x128_si256(first, last, 0x20);
-      const __m256i upper = _mm256_permute2x128_si256(first, last, 0x31);
-      _mm256_storeu_si256(reinterpret_cast<__m256i*>(sums + y), _mm256_add_epi32(lower, upper));
-    }
-  }
-  for (; y < height; ++y, d += width) {
-    std::int32_t total = 0;
-    for (int x = 0; x < width; ++x) total += d[x];
-    sums[y] = total;
-  }
-}
-
-/// Frames [i, i + kRows) against frames [j, j + kColumns): each product of a block of pairs has a register of
-/// its own.
-template <int kRows, int kColumns>
-void gram_block(const Workspace<std::int16_t>& work,
-                int i,
-                int j,
-                int pixels,
-                int run,
-                std::int64_t (&out)[kRows][kColumns]) {
-  for (auto& row : out)
-    for (std::int64_t& value : row) value = 0;
-  for (int begin = 0; begin < pixels; begin += run) {
-    const int end = begin + run < pixels ? begin + run : pixels;
-    __m256i sum[kRows][kColumns];
-    for (auto& row : sum)
-      for (__m256i& value : row) value = _mm256_setzero_si256();
-    for (int p = begin; p < end; p += kLane) {
-      __m256i b[kColumns];
-      for (int c = 0; c < kColumns; ++c)
-        b[c] = load(work.centred[static_cast<std::size_t>(j + c)].data() + p);
-      for (int r = 0; r < kRows; ++r) {
-        const __m256i a = load(work.centred[static_cast<std::size_t>(i + r)].data() + p);
-        for (int c = 0; c < kColumns; ++c)
-          sum[r][c] = _mm256_add_epi32(sum[r][c], _mm256_madd_epi16(a, b[c]));
-      }
-    }
-    for (int r = 0; r < kRows; ++r)
-      for (int c = 0; c < kColumns; ++c) out[r][c] += sum_of_32(sum[r][c]);
-  }
-}
-
-inline void whole_gram(
-    const Workspace<std::int16_t>& work, int frames, int pixels, double magnitude, std::int64_t* gram) {
-  // A lane of 32 bits takes two products a vector; magnitudes of 32768 would not fit even once.
-  const int vectors = products_in_32_bits(magnitude) / 2;
-  if (vectors < 1) {
-    for (int i = 0; i < frames; ++i)
-      for (int j = i; j < frames; ++j) {
-        std::int64_t total = 0;
-        for (int p = 0; p < pixels; ++p)
-          total += std::int64_t{work.centred[static_cast<std::size_t>(i)][static_cast<std::size_t>(p)]} *
-                   work.centred[static_cast<std::size_t>(j)][static_cast<std::size_t>(p)];
-        gram[pair_index(i, j, frames)] = total;
-      }
-    return;
-  }
-  const int run =
-      (vectors < static_cast<int>(kCellPixels) / kLane ? vectors : static_cast<int>(kCellPixels) / kLane) *
-      kLane;
-  int i = 0;
-  for (; i + 2 <= frames; i += 2) {
-    int j = i;
-    for (; j + 4 <= frames; j += 4) {
-      std::int64_t block[2][4];
-      gram_block(work, i, j, pixels, run, block);
-      for (int r = 0; r < 2; ++r)
-        for (int c = 0; c < 4; ++c)
-          if (j + c >= i + r) gram[pair_index(i + r, j + c, frames)] = block[r][c];
-    }
-    for (; j < frames; ++j) {
-      std::int64_t block[2][1];
-      gram_block(work, i, j, pixels, run, block);
-      for (int r = 0; r < 2; ++r)
-        if (j >= i + r) gram[pair_index(i + r, j, frames)] = block[r][0];
-    }
-  }
-  for (; i < frames; ++i)
-    for (int j = i; j < frames; ++j) {
-      std::int64_t block[1][1];
-      gram_block(work, i, j, pixels, run, block);
-      gram[pair_index(i, j, frames)] = block[0][0];
-    }
-}
-
-inline int whole_deviation_range(const Workspace<std::int16_t>& work,
-                                 int frames,
-                                 int pixels,
-                                 const int* mean) {
-  const int vectors = pixels / kLane * kLane;
-  __m256i means[kGroupFrames];
-  for (int f = 0; f < frames; ++f) means[f] = _mm256_set1_epi16(static_cast<std::int16_t>(mean[f]));
-  __m256i widest = _mm256_setzero_si256();
-  for (int p = 0; p < vectors; p += kLane) {
-    // Differences saturate at the ends of 16 bits, which is more than any limit that is asked about.
-    __m256i low = _mm256_subs_epi16(load(work.centred[0].data() + p), means[0]);
-    __m256i high = low;
-    for (int f = 1; f < frames; ++f) {
-      const __m256i e =
-          _mm256_subs_epi16(load(work.centred[static_cast<std::size_t>(f)].data() + p), means[f]);
-      low = _mm256_min_epi16(low, e);
-      high = _mm256_max_epi16(high, e);
-    }
-    widest = _mm256_max_epi16(widest, _mm256_subs_epi16(high, low));
-  }
-  alignas(32) std::int16_t lanes[kLane];
-  _mm256_store_si256(reinterpret_cast<__m256i*>(lanes), widest);
-  int out = 0;
-  for (const std::int16_t lane : lanes) out = lane > out ? lane : out;
-  for (int p = vectors; p < pixels; ++p) {
-    int low = work.centred[0][static_cast<std::size_t>(p)] - mean[0];
-    int high = low;
-    for (int f = 1; f < frames; ++f) {
-      const int e = work.centred[static_cast<std::size_t>(f)][static_cast<std::size_t>(p)] - mean[f];
-      low = e < low ? e : low;
-      high = e > high ? e : high;
-    }
-    out = high - low > out ? high - low : out;
-  }
-  return out;
-}
-
-inline void whole_add(const Workspace<std::int16_t>& work,
-                      int frames,
-                      int pixels,
-                      double magnitude,
-                      bool begin,
-                      int shift,
-                      std::int32_t* total) {
-  const int vectors = pixels / kLane * kLane;
-  const __m256i shifts = _mm256_set1_epi32(shift);
-  const bool narrow = magnitude * frames <= 32767;  // the sum over frames fits 16 bits
-  for (int p = 0; p < vectors; p += kLane) {
-    __m256i low = shifts;
-    __m256i high = shifts;
-    if (narrow) {
-      __m256i sum = load(work.centred[0].data() + p);
-      for (int f = 1; f < frames; ++f)
-        sum = _mm256_add_epi16(sum, load(work.centred[static_cast<std::size_t>(f)].data() + p));
-      low = _mm256_add_epi32(low, _mm256_cvtepi16_epi32(_mm256_castsi256_si128(sum)));
-      high = _mm256_add_epi32(high, _mm256_cvtepi16_epi32(_mm256_extracti128_si256(sum, 1)));
-    } else {
-      for (int f = 0; f < frames; ++f) {
-        const __m256i d = load(work.centred[static_cast<std::size_t>(f)].data() + p);
-        low = _mm256_add_epi32(low, _mm256_cvtepi16_epi32(_mm256_castsi256_si128(d)));
-        high = _mm256_add_epi32(high, _mm256_cvtepi16_epi32(_mm256_extracti128_si256(d, 1)));
-      }
-    }
-    auto* to = reinterpret_cast<__m256i*>(total + p);
-    if (!begin) {
-      low = _mm256_add_epi32(low, _mm256_loadu_si256(to));
-      high = _mm256_add_epi32(high, _mm256_loadu_si256(to + 1));
-    }
-    _mm256_storeu_si256(to, low);
-    _mm256_storeu_si256(to + 1, high);
-  }
-  for (int p = vectors; p < pixels; ++p) {
-    std::int32_t sum = begin ? shift : total[p] + shift;
-    for (int f = 0; f < frames; ++f)
-      sum += work.centred[static_cast<std::size_t>(f)][static_cast<std::size_t>(p)];
-    total[p] = sum;
-  }
+  return total + sum_of_32(_mm256_madd_epi16(count, _mm256_set1_epi16(1)));
 }
 
 inline std::int64_t whole_square(const std::int32_t* total, int count) {
@@ -293,16 +384,32 @@ inline std::int64_t whole_square(const std::int32_t* total, int count) {
   __m256i odd = _mm256_setzero_si256();
   const int vectors = count / 8 * 8;
   for (int p = 0; p < vectors; p += 8) {
-    const __m256i v = _mm256_loadu_si256(reinterpret_cast<const __m256i*>(total + p));
+    const __m256i v = load(total + p);
     const __m256i upper = _mm256_srli_epi64(v, 32);
     even = _mm256_add_epi64(even, _mm256_mul_epi32(v, v));
     odd = _mm256_add_epi64(odd, _mm256_mul_epi32(upper, upper));
   }
-  alignas(32) std::int64_t part[4];
-  _mm256_store_si256(reinterpret_cast<__m256i*>(part), _mm256_add_epi64(even, odd));
+  std::int64_t part[4];
+  store(part, _mm256_add_epi64(even, odd));
   std::int64_t sum = part[0] + part[1] + part[2] + part[3];
   for (int p = vectors; p < count; ++p) sum += static_cast<std::int64_t>(total[p]) * total[p];
   return sum;
+}
+
+inline void whole_lags(const WholeWorkspace& work,
+                       int pixels,
+                       int width,
+                       std::int64_t (&sums)[kNeighbours + 1]) {
+  const std::int16_t* d = work.difference.data();
+  const int apart[kNeighbours + 1] = {0, 1, width, width + 1};
+  __m256i sum[kNeighbours + 1];
+  for (__m256i& s : sum) s = _mm256_setzero_si256();
+  for (int p = 0; p < pixels; p += kLane) {
+    const __m256i v = load(d + p);
+    for (int k = 0; k <= kNeighbours; ++k)
+      sum[k] = _mm256_add_epi32(sum[k], _mm256_madd_epi16(v, load(d + p + apart[k])));
+  }
+  for (int k = 0; k <= kNeighbours; ++k) sums[k] = sum_of_32(sum[k]);
 }
 
 }  // namespace

@@ -32,19 +32,28 @@ BlockGrid block_grid(const Rect& rect) {
   return grid;
 }
 
+int cell_rows(const BlockGrid& grid) {
+  const int block = (grid.rect.width + grid.columns - 1) / grid.columns;
+  const int cells = (block + kCellColumns - 1) / kCellColumns;
+  const int cell = (block + cells - 1) / cells;
+  return cell * kCellRows <= static_cast<int>(kCellPixels) ? kCellRows : kCellRows / 2;
+}
+
 Geometry make_geometry(const FrameShape& shape, const std::vector<Rect>& regions) {
   Geometry geometry;
   // Regions with the same rows, cut alike, share bands, so that their pixels are read once.
-  std::map<std::tuple<int, int, int>, std::vector<int>> alike;
+  std::map<std::tuple<int, int, int, int>, std::vector<int>> alike;
   for (std::size_t i = 0; i < regions.size(); ++i) {
-    geometry.grids.push_back(block_grid(regions[i]));
-    alike[{regions[i].y, regions[i].height, geometry.grids.back().rows}].push_back(static_cast<int>(i));
+    const BlockGrid grid = block_grid(regions[i]);
+    alike[{regions[i].y, regions[i].height, grid.rows, cell_rows(grid)}].push_back(static_cast<int>(i));
+    geometry.grids.push_back(grid);
   }
   std::vector<bool> given(static_cast<std::size_t>(shape.height), false);
   for (const auto& [rows, members] : alike) {
     const BlockGrid& first = geometry.grids[static_cast<std::size_t>(members.front())];
     for (int block_row = 0; block_row < first.rows; ++block_row) {
-      const std::vector<int> y = cuts(first.row_begin(block_row), first.row_begin(block_row + 1), kCellRows);
+      const std::vector<int> y =
+          cuts(first.row_begin(block_row), first.row_begin(block_row + 1), cell_rows(first));
       for (std::size_t k = 0; k + 1 < y.size(); ++k) {
         Band band{y[k], y[k + 1] - y[k], {}, members, {}};
         for (const int region : members) {

@@ -3,10 +3,13 @@
 /// its regions alone, never on threads or caches.
 ///
 /// A region has 16 x 16 blocks, or fewer where a block would have under 64 pixels, nearly equal in size. A
-/// block is cut into cells, nearly equal, at most 128 columns wide and 16 rows high, so that blocks are
-/// always whole unions of cells. A band is a row of cells: all cells that lie in the same rows, of every
-/// region that is cut alike there.
+/// block is cut into cells, nearly equal, at most 128 columns wide and 16 rows high, and of at most 1024
+/// pixels (eight frames of 16 bits then fit the nearest cache), so that blocks are always whole unions of
+/// cells. A band is a row of cells: all cells that lie in the same rows, of every region that is cut alike
+/// there.
 
+#include <cstddef>
+#include <cstdint>
 #include <vector>
 
 #include "base/image.h"
@@ -17,6 +20,7 @@ inline constexpr int kBlocksPerSide = 16;
 inline constexpr int kBlockPixels = 64;
 inline constexpr int kCellColumns = 128;
 inline constexpr int kCellRows = 16;
+inline constexpr std::size_t kCellPixels = 1024;
 
 struct Cell {
   int region = 0;
@@ -43,6 +47,9 @@ struct BlockGrid {
 };
 
 BlockGrid block_grid(const Rect& rect);
+
+/// Most rows of a cell: as its widest cell has them.
+int cell_rows(const BlockGrid& grid);
 
 struct Geometry {
   std::vector<BlockGrid> grids;  ///< [region]

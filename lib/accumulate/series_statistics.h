@@ -20,24 +20,41 @@ namespace evenfield {
 
 inline constexpr int kGroupFrames = 8;
 
-/// Place of frames i <= j of a group of `frames` frames in the upper triangle of its Gram matrix.
-constexpr std::size_t pair_index(int i, int j, int frames) {
-  return static_cast<std::size_t>(i * (2 * frames - i + 1) / 2 + (j - i));
-}
-constexpr std::size_t pair_count(int frames) { return static_cast<std::size_t>(frames * (frames + 1) / 2); }
-
 /// A group of consecutive frames.
 struct GroupStatistics {
   int first_frame = 0;
   int frames = 0;
-  std::vector<double> sums;  ///< [block][frame of the group]: sum over pixels of (y - centre)
-  std::vector<double> gram;  ///< [block][pair]: sum over pixels of (y_i - centre)(y_j - centre)
+  std::vector<double> sums;     ///< [block][frame of the group]: sum over pixels of (y - centre)
+  std::vector<double> squares;  ///< [block][frame]: sum over pixels of (y - centre)^2
+  /// [block][frame]: sum over pixels of (y - centre) x (sum over the frames of the group of (y - centre)).
+  std::vector<double> with_total;
 };
 
 /// An extreme code and how many samples have it.
 struct Extreme {
   double code = 0;
   std::int64_t count = 0;
+};
+
+/// Bits of the codes that occur, negative ones as two's complement of 64 bits. Not valid where a pixel is no
+/// whole number, or a cell spans more than 65535 codes.
+struct CodeBits {
+  bool valid = false;
+  std::uint64_t any = 0;  ///< set in some code
+  std::uint64_t all = 0;  ///< set in every code
+};
+
+/// Neighbours in a row, in a column, and along a diagonal to the right and down.
+inline constexpr int kNeighbours = 3;
+
+/// Of the difference of the first two frames, each cell's mean taken out: square / pixels estimates its
+/// variance without bias, products / pairs its covariance between neighbours, without bias where that is
+/// small. Pairs lie inside cells.
+struct NeighbourSums {
+  std::int64_t pixels = 0;
+  double square = 0;
+  std::array<std::int64_t, kNeighbours> pairs{};
+  std::array<double, kNeighbours> products{};
 };
 
 struct RegionStatistics {
@@ -48,11 +65,13 @@ struct RegionStatistics {
   std::vector<std::int64_t> pixels;  ///< [block]
   std::vector<GroupStatistics> groups;
   std::vector<double> total_square;  ///< [block] sum over pixels of (sum over all frames of (y - centre))^2
-  std::vector<Extreme> lowest, highest;  ///< [block] over all frames, hits included
-  std::vector<std::int64_t> block_hits;  ///< [block] samples set aside
-  std::vector<std::int64_t> frame_hits;  ///< [frame] samples set aside
-  std::vector<double> row_sums;          ///< [frame][row of the region] sum over columns of y, DN
-  std::vector<double> column_sums;       ///< [column of the region] sum over rows and frames of y, DN
+  std::vector<Extreme> lowest, highest;   ///< [block] over all frames, hits included
+  CodeBits bits;                          ///< over all frames, hits included
+  std::vector<NeighbourSums> neighbours;  ///< [block]; no pixels where the series has one frame
+  std::vector<std::int64_t> block_hits;   ///< [block] samples set aside
+  std::vector<std::int64_t> frame_hits;   ///< [frame] samples set aside
+  std::vector<double> row_sums;           ///< [frame][row of the region] sum over columns of y, DN
+  std::vector<double> column_sums;        ///< [column of the region] sum over rows and frames of y, DN
 
   std::size_t blocks() const { return centre.size(); }
 };

@@ -16,8 +16,11 @@ struct BlockSums {
   double total_square = 0;     ///< sum over pixels of (sum over frames of (y - level))^2
 };
 
-BlockSums block_sums(const RegionStatistics& region, std::size_t block, int frames, double level) {
-  BlockSums out;
+/// Fills `out`, whose memory serves block after block.
+const BlockSums& block_sums(
+    const RegionStatistics& region, std::size_t block, int frames, double level, BlockSums& out) {
+  out.sum.clear();
+  out.square.clear();
   out.pixels = static_cast<double>(region.pixels[block]);
   const double shift = region.centre[block] - level;
   double raw_total = 0;
@@ -25,7 +28,7 @@ BlockSums block_sums(const RegionStatistics& region, std::size_t block, int fram
     const auto size = static_cast<std::size_t>(group.frames);
     for (int f = 0; f < group.frames; ++f) {
       const double sum = group.sums[block * size + static_cast<std::size_t>(f)];
-      const double square = group.gram[block * pair_count(group.frames) + pair_index(f, f, group.frames)];
+      const double square = group.squares[block * size + static_cast<std::size_t>(f)];
       raw_total += sum;
       out.sum.push_back(sum + out.pixels * shift);
       out.square.push_back(square + 2 * shift * sum + out.pixels * shift * shift);
@@ -82,9 +85,10 @@ RegionSummary summarize(const RegionStatistics& region, std::optional<double> da
   const std::size_t blocks = region.blocks();
   const auto frames = static_cast<std::size_t>(s.frames);
 
+  BlockSums sums;
   s.frame_means.assign(frames, 0.0);
   for (std::size_t b = 0; b < blocks; ++b) {
-    const BlockSums sums = block_sums(region, b, s.frames, 0.0);
+    block_sums(region, b, s.frames, 0.0, sums);
     s.block_pixels.push_back(sums.pixels);
     s.block_mean.push_back(sums.total / (sums.pixels * s.frames));
     s.pixels += sums.pixels;
@@ -105,7 +109,7 @@ RegionSummary summarize(const RegionStatistics& region, std::optional<double> da
   // serve better.
   double offset_squares = 0;
   for (std::size_t b = 0; b < blocks; ++b) {
-    const BlockSums sums = block_sums(region, b, s.frames, s.block_mean[b]);
+    block_sums(region, b, s.frames, s.block_mean[b], sums);
     for (std::size_t f = 0; f < frames; ++f) offset_squares += sums.square[f];
     offset_squares -= sums.total_square / s.frames;
   }
@@ -123,11 +127,11 @@ RegionSummary summarize(const RegionStatistics& region, std::optional<double> da
   for (std::size_t b = 0; b < blocks; ++b) {
     double block = 0;
     if (s.scaled) {
-      const BlockSums sums = block_sums(region, b, s.frames, *dark_level);
+      block_sums(region, b, s.frames, *dark_level, sums);
       for (std::size_t f = 0; f < frames; ++f) block += sums.square[f] / s.scales[f];
       block -= sums.total_square / s.frames;
     } else {
-      const BlockSums sums = block_sums(region, b, s.frames, s.block_mean[b]);
+      block_sums(region, b, s.frames, s.block_mean[b], sums);
       for (std::size_t f = 0; f < frames; ++f) {
         const double offset = s.frame_means[f] - s.mean;
         block += sums.square[f] - 2 * offset * sums.sum[f] + sums.pixels * offset * offset;
@@ -140,8 +144,8 @@ RegionSummary summarize(const RegionStatistics& region, std::optional<double> da
                           static_cast<double>(region.block_hits[b]));
     squares += s.block_squares.back();
     s.dof += s.block_dof.back();
-    spatial += block_sums(region, b, s.frames, s.mean).total_square;
-    const double own = block_sums(region, b, s.frames, s.block_mean[b]).total_square;
+    spatial += block_sums(region, b, s.frames, s.mean, sums).total_square;
+    const double own = block_sums(region, b, s.frames, s.block_mean[b], sums).total_square;
     s.block_spread.push_back(std::sqrt(std::max(0.0, own) / s.block_pixels[b]) / s.frames);
   }
   if (frames > 1 && s.dof > 0) {

@@ -1,6 +1,7 @@
 #include "formats/toml_document.h"
 
 #include <algorithm>
+#include <array>
 #include <charconv>
 #include <chrono>
 #include <cmath>
@@ -390,10 +391,13 @@ Result<TomlDocument> TomlDocument::read(const std::filesystem::path& file) {
   if (std::filesystem::is_directory(status)) return failed("found a folder, expected a TOML file");
   std::ifstream stream(file, std::ios::binary);
   if (!stream) return failed("found a file that cannot be opened, expected a readable TOML file");
-  std::string text(kMaxBytes + 1, '\0');
-  stream.read(text.data(), static_cast<std::streamsize>(text.size()));
+  std::string text;  // a pipe has no size to ask for, so pieces
+  std::array<char, 65536> piece;
+  while (stream && text.size() <= kMaxBytes) {
+    stream.read(piece.data(), piece.size());
+    text.append(piece.data(), static_cast<std::size_t>(stream.gcount()));
+  }
   if (stream.bad()) return failed("found a file that cannot be read, expected a readable TOML file");
-  text.resize(static_cast<std::size_t>(stream.gcount()));
   return parse(text, file);
 }
 

@@ -65,24 +65,26 @@ void check_against_definitions(const RawFrames<T>& raw, const RegionStatistics& 
     REQUIRE(region.lowest[block].count == at_low);
     REQUIRE(region.highest[block].count == at_high);
     for (const GroupStatistics& group : region.groups)
-      for (int i = 0; i < group.frames; ++i)
-        for (int j = i; j < group.frames; ++j) {
-          double sum = 0;
-          double product = 0;
-          double magnitude = 0;
-          for (int y = y0; y < y1; ++y)
-            for (int x = x0; x < x1; ++x) {
-              const double a = pixel(group.first_frame + i, x, y) - c;
-              const double d = pixel(group.first_frame + j, x, y) - c;
-              sum += a;
-              product += a * d;
-              magnitude += std::abs(a * d);
-            }
-          close(group.sums[block * static_cast<std::size_t>(group.frames) + static_cast<std::size_t>(i)], sum,
-                1 + std::sqrt(magnitude));
-          close(group.gram[block * pair_count(group.frames) + pair_index(i, j, group.frames)], product,
-                1 + magnitude);
-        }
+      for (int i = 0; i < group.frames; ++i) {
+        double sum = 0;
+        double square = 0;
+        double with_total = 0;
+        double magnitude = 0;
+        for (int y = y0; y < y1; ++y)
+          for (int x = x0; x < x1; ++x) {
+            const double d = pixel(group.first_frame + i, x, y) - c;
+            double total = 0;
+            for (int j = 0; j < group.frames; ++j) total += pixel(group.first_frame + j, x, y) - c;
+            sum += d;
+            square += d * d;
+            with_total += d * total;
+            magnitude += std::abs(d) * (std::abs(d) + std::abs(total));
+          }
+        const std::size_t at = block * static_cast<std::size_t>(group.frames) + static_cast<std::size_t>(i);
+        close(group.sums[at], sum, 1 + std::sqrt(magnitude));
+        close(group.squares[at], square, 1 + magnitude);
+        close(group.with_total[at], with_total, 1 + magnitude);
+      }
   }
   for (int f = 0; f < count; ++f)
     for (int y = 0; y < r.height; ++y) {
@@ -127,7 +129,13 @@ bool same_bits(const SeriesStatistics& a, const SeriesStatistics& b) {
            p.row_sums == q.row_sums && p.column_sums == q.column_sums && p.block_hits == q.block_hits &&
            p.frame_hits == q.frame_hits && p.groups.size() == q.groups.size();
     for (std::size_t g = 0; same && g < p.groups.size(); ++g)
-      same = p.groups[g].sums == q.groups[g].sums && p.groups[g].gram == q.groups[g].gram;
+      same = p.groups[g].sums == q.groups[g].sums && p.groups[g].squares == q.groups[g].squares &&
+             p.groups[g].with_total == q.groups[g].with_total;
+    for (std::size_t i = 0; same && i < p.neighbours.size(); ++i)
+      same = p.neighbours[i].square == q.neighbours[i].square &&
+             p.neighbours[i].products == q.neighbours[i].products &&
+             p.neighbours[i].pairs == q.neighbours[i].pairs;
+    same = same && p.bits.valid == q.bits.valid && p.bits.any == q.bits.any && p.bits.all == q.bits.all;
   }
   return same;
 }
@@ -165,7 +173,7 @@ double pooled_variance(const SeriesStatistics& s) {
     double total = 0;
     for (const GroupStatistics& group : s.regions[0].groups)
       for (int f = 0; f < group.frames; ++f)
-        total += group.gram[b * pair_count(group.frames) + pair_index(f, f, group.frames)];
+        total += group.squares[b * static_cast<std::size_t>(group.frames) + static_cast<std::size_t>(f)];
     squares += total - s.regions[0].total_square[b] / s.frames;
     dof += static_cast<double>(s.regions[0].pixels[b] * (s.frames - 1) - s.regions[0].block_hits[b]);
   }

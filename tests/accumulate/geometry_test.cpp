@@ -35,6 +35,7 @@ TEST_CASE("every pixel of a region lies in exactly one cell, and in the block th
         REQUIRE(cell.x == right);
         REQUIRE(cell.width >= 1);
         REQUIRE(cell.width <= kCellColumns);
+        REQUIRE(static_cast<std::size_t>(cell.width * band.height) <= kCellPixels);
         right = cell.x + cell.width;
         pixels += std::int64_t{cell.width} * band.height;
         const int column = cell.block % grid.columns;

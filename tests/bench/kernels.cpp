@@ -26,15 +26,16 @@ using evenfield::CellTotals;
 using evenfield::PixelType;
 
 constexpr int kColumns = 2048;
+constexpr int kRows = static_cast<int>(evenfield::kCellPixels) / evenfield::kCellColumns;
 constexpr int kCells = kColumns / evenfield::kCellColumns;
 constexpr int kFrames = evenfield::kGroupFrames;
-constexpr std::size_t kFramePixels = std::size_t{evenfield::kCellRows} * kColumns;
+constexpr std::size_t kFramePixels = std::size_t{kRows} * kColumns;
 constexpr double kHitThreshold = 9;  // as AccumulateOptions has it
 
 /// One band, frame after frame.
 template <class Pixel>
 struct BandPixels {
-  std::vector<Pixel> values = std::vector<Pixel>(kFramePixels * kFrames);
+  std::vector<Pixel> values = std::vector<Pixel>(kFramePixels * kFrames + evenfield::kReadBeyond);
   const Pixel* frame(int f) const { return values.data() + kFramePixels * static_cast<std::size_t>(f); }
 };
 
@@ -50,7 +51,7 @@ BandPixels<Pixel> exposed(bool uneven) {
   std::mt19937 bits(20261124);
   std::normal_distribution<double> normal;
   BandPixels<Pixel> band;
-  for (std::size_t i = 0; i < band.values.size(); ++i) {
+  for (std::size_t i = 0; i < kFramePixels * kFrames; ++i) {
     const auto frame = static_cast<double>(i / kFramePixels);
     const auto column = static_cast<double>(i % kColumns);
     const double light = uneven ? 1 - 0.5 * column / kColumns : 1.0;
@@ -76,13 +77,17 @@ void measure_band(benchmark::State& state, PixelType type, bool uneven, bool por
   const BandPixels<Pixel> band = exposed<Pixel>(uneven);
   const CellKernels kernels = evenfield::cell_kernels(type, portable);
   const auto totals = std::make_unique<CellTotals>();
+  std::vector<double> memory(kernels.workspace_bytes / sizeof(double) + 8);
+  std::size_t room = memory.size() * sizeof(double);
+  void* workspace = memory.data();
+  std::align(64, kernels.workspace_bytes, workspace, room);
   CellStatistics statistics;
   CellSquares squares;
   CellInput input;
   input.stride = kColumns;
   input.frames = kFrames;
   input.width = evenfield::kCellColumns;
-  input.height = evenfield::kCellRows;
+  input.height = kRows;
   input.hit_threshold = kHitThreshold;
   for (auto _ : state) {
     for (int c = 0; c < kCells; ++c) {
@@ -93,8 +98,7 @@ void measure_band(benchmark::State& state, PixelType type, bool uneven, bool por
       // case.
       input.known_lowest = std::numeric_limits<double>::infinity();
       input.known_highest = -std::numeric_limits<double>::infinity();
-      kernels.measure(input, *totals, statistics);
-      kernels.square(*totals, input.width, input.height, squares);
+      kernels.measure(input, *totals, workspace, statistics, squares);
       benchmark::DoNotOptimize(statistics);
       benchmark::DoNotOptimize(squares);
     }
