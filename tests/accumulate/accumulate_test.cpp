@@ -119,6 +119,56 @@ void check_type(double low, double high, double tolerance) {
     }
 }
 
+/// Neighbours straight from their definition: the difference of the first two frames, cell by cell.
+template <class T>
+void check_neighbours(const RawFrames<T>& raw, const Geometry& geometry, const RegionStatistics& region) {
+  const int width = raw.shape().width;
+  std::vector<NeighbourSums> expected(region.blocks());
+  for (const Band& band : geometry.bands)
+    for (const Cell& cell : band.cells) {
+      const auto difference = [&](int x, int y) {
+        const auto at = static_cast<std::size_t>((band.y + y) * width + cell.x + x);
+        return static_cast<double>(raw.frames()[1][at]) - static_cast<double>(raw.frames()[0][at]);
+      };
+      const int n = cell.width * band.height;
+      double mean = 0;
+      for (int y = 0; y < band.height; ++y)
+        for (int x = 0; x < cell.width; ++x) mean += difference(x, y) / n;
+      double square = 0;
+      double products[kNeighbours] = {0, 0, 0};
+      std::int64_t pairs[kNeighbours] = {0, 0, 0};
+      constexpr int kStep[kNeighbours][2] = {{1, 0}, {0, 1}, {1, 1}};
+      for (int y = 0; y < band.height; ++y)
+        for (int x = 0; x < cell.width; ++x) {
+          square += (difference(x, y) - mean) * (difference(x, y) - mean);
+          for (std::size_t k = 0; k < kNeighbours; ++k) {
+            const int x2 = x + kStep[k][0];
+            const int y2 = y + kStep[k][1];
+            if (x2 >= cell.width || y2 >= band.height) continue;
+            products[k] += (difference(x, y) - mean) * (difference(x2, y2) - mean);
+            ++pairs[k];
+          }
+        }
+      NeighbourSums& sums = expected[static_cast<std::size_t>(cell.block)];
+      sums.pixels += n;
+      sums.square += square * n / (n - 1);
+      for (std::size_t k = 0; k < kNeighbours; ++k) {
+        sums.pairs[k] += pairs[k];
+        // The estimated mean takes 1/n of the variance out of each product.
+        sums.products[k] += products[k] + static_cast<double>(pairs[k]) * square / (n * (n - 1.0));
+      }
+    }
+  for (std::size_t b = 0; b < region.blocks(); ++b) {
+    const NeighbourSums& got = region.neighbours[b];
+    REQUIRE(got.pixels == expected[b].pixels);
+    REQUIRE(got.square == doctest::Approx(expected[b].square).epsilon(1e-9));
+    for (std::size_t k = 0; k < kNeighbours; ++k) {
+      REQUIRE(got.pairs[k] == expected[b].pairs[k]);
+      REQUIRE(std::abs(got.products[k] - expected[b].products[k]) <= 1e-9 * expected[b].square);
+    }
+  }
+}
+
 bool same_bits(const SeriesStatistics& a, const SeriesStatistics& b) {
   bool same = a.fingerprints == b.fingerprints && a.code_sample == b.code_sample &&
               a.regions.size() == b.regions.size();
@@ -141,13 +191,13 @@ bool same_bits(const SeriesStatistics& a, const SeriesStatistics& b) {
 }
 
 template <class T>
-void check_same_bits() {
+void check_same_bits(double mean, double spread, double slope, double hit) {
   boost::random::mt19937_64 random(11);
-  boost::random::normal_distribution<double> noise(1000.0, 30.0);
+  boost::random::normal_distribution<double> noise(mean, spread);
   const int width = 300;
   const int height = 150;
-  auto frames = make_frames<T>(width, height, 11, [&](int, int, int) { return noise(random); });
-  for (int k = 0; k < 12; ++k) frames[3][static_cast<std::size_t>(k * 2011 + 500)] = static_cast<T>(4000);
+  auto frames = make_frames<T>(width, height, 11, [&](int, int x, int) { return noise(random) + slope * x; });
+  for (int k = 0; k < 12; ++k) frames[3][static_cast<std::size_t>(k * 2011 + 500)] = static_cast<T>(hit);
   const RawFrames<T> raw(width, height, frames);
   const Geometry geometry = make_geometry(raw.shape(), {{0, 0, 150, height}, {150, 0, 150, height}});
   AccumulateOptions one;
@@ -200,6 +250,122 @@ TEST_CASE("sums of 32 bit integers and floats agree with their definitions to ro
   check_type<double>(1e6, 1e6 + 1, 1e-9);  // sums of y itself round at 1e6 x 2^-53 x pixels
 }
 
+TEST_CASE(
+    "neighbours follow their definition, narrow and wide, in integers and floats, in cells of any shape") {
+  boost::random::mt19937_64 random(23);
+  boost::random::normal_distribution<double> noise(0.0, 1.0);
+  const auto check = [&](auto type, int width, int height, double spread) {
+    using T = decltype(type);
+    const RawFrames<T> raw(width, height, make_frames<T>(width, height, 3, [&](int f, int x, int) {
+                             return 20000 + 50 * f + 3 * x + spread * noise(random);
+                           }));
+    const Geometry geometry = make_geometry(raw.shape(), {{0, 0, width, height}});
+    AccumulateOptions options;
+    options.hit_threshold = 0;
+    const auto statistics = accumulate(raw.stack(), geometry, options);
+    REQUIRE(statistics);
+    check_neighbours(raw, geometry, statistics->regions[0]);
+  };
+  for (const auto& [width, height] :
+       {std::pair{300, 70}, std::pair{33, 18}, std::pair{2048, 16}, std::pair{1, 80}}) {
+    check(std::uint16_t{}, width, height, 30.0);
+    check(std::uint16_t{}, width, height, 3000.0);
+    check(float{}, width, height, 30.0);
+    check(double{}, width, height, 0.01);
+  }
+}
+
+TEST_CASE("noise that a row's neighbours share shows in their covariance and white noise does not") {
+  boost::random::mt19937_64 random(29);
+  boost::random::normal_distribution<double> noise(0.0, 40.0);
+  const int side = 512;
+  std::vector<double> white(static_cast<std::size_t>(side * side) + 1);
+  // Moving average of two pixels of a row: covariance with the next is theta / (1 + theta^2) of the variance.
+  constexpr double kTheta = 0.4;
+  const auto frames = make_frames<std::uint16_t>(side, side, 2, [&](int, int x, int y) {
+    if (x == 0 && y == 0)
+      for (double& w : white) w = noise(random);
+    const auto at = static_cast<std::size_t>(y * side + x);
+    return std::lround(8000 + white[at + 1] + kTheta * white[at]);
+  });
+  const RawFrames<std::uint16_t> raw(side, side, frames);
+  const auto statistics = accumulate(raw.stack(), make_geometry(raw.shape(), {{0, 0, side, side}}), {});
+  REQUIRE(statistics);
+  NeighbourSums all;
+  for (const NeighbourSums& block : statistics->regions[0].neighbours) {
+    all.pixels += block.pixels;
+    all.square += block.square;
+    for (std::size_t k = 0; k < kNeighbours; ++k) {
+      all.pairs[k] += block.pairs[k];
+      all.products[k] += block.products[k];
+    }
+  }
+  const double variance = all.square / static_cast<double>(all.pixels);
+  // Twice the variance of one frame; five standard errors of a covariance of 262144 pixels are 0.01 of it.
+  CHECK(variance == doctest::Approx(2 * 40.0 * 40.0 * (1 + kTheta * kTheta)).epsilon(0.02));
+  const auto correlation = [&](std::size_t k) {
+    return all.products[k] / static_cast<double>(all.pairs[k]) / variance;
+  };
+  CHECK(std::abs(correlation(0) - kTheta / (1 + kTheta * kTheta)) < 0.01);
+  CHECK(std::abs(correlation(1)) < 0.01);
+  CHECK(std::abs(correlation(2)) < 0.01);
+}
+
+TEST_CASE("bits of the codes: which occur and which all have, also in negative codes and floats") {
+  const auto bits = [](auto type, auto value) {
+    using T = decltype(type);
+    const RawFrames<T> raw(70, 40, make_frames<T>(70, 40, 9, value));
+    for (const bool portable : {false, true}) {
+      AccumulateOptions options;
+      options.portable_kernels = portable;
+      const auto statistics = accumulate(raw.stack(), make_geometry(raw.shape(), {{0, 0, 70, 40}}), options);
+      REQUIRE(statistics);
+      if (portable) return statistics->regions[0].bits;
+    }
+    return CodeBits{};
+  };
+  // 12 bits in the upper bits of 16, and bit 14 always set.
+  const auto high = [](int f, int x, int y) { return 16 * ((f * 311 + x * 37 + y * 73) % 1024) + 16384; };
+  for (const CodeBits& seen :
+       {bits(std::uint16_t{}, high), bits(std::int32_t{}, high), bits(float{}, high)}) {
+    CHECK(seen.valid);
+    CHECK(seen.any == 0x7ff0U);
+    CHECK(seen.all == 0x4000U);
+  }
+  const CodeBits negative = bits(std::int16_t{}, [](int, int x, int) { return -4 - 4 * (x % 2); });
+  CHECK(negative.any == ~std::uint64_t{3});
+  CHECK(negative.all == ~std::uint64_t{7});
+  CHECK(!bits(float{}, [](int, int x, int) { return x + 0.5; }).valid);
+  CHECK(!bits(std::int32_t{}, [](int, int x, int) { return 100000 * x; }).valid);
+}
+
+TEST_CASE("whole numbers give the same sums to the bit in whatever type they are stored") {
+  boost::random::mt19937_64 random(31);
+  boost::random::normal_distribution<double> noise(9000.0, 120.0);
+  const int width = 210;
+  const int height = 90;
+  auto codes = make_frames<std::uint16_t>(
+      width, height, 11, [&](int, int x, int) { return std::lround(noise(random)) + 40 * x; });
+  for (int k = 0; k < 12; ++k) codes[3][static_cast<std::size_t>(k * 911 + 500)] = 65000;
+  const auto measured = [&](auto type) {
+    using T = decltype(type);
+    const RawFrames<T> raw(
+        width, height, make_frames<T>(width, height, 11, [&](int f, int x, int y) {
+          return codes[static_cast<std::size_t>(f)][static_cast<std::size_t>(y * width + x)];
+        }));
+    auto statistics = accumulate(raw.stack(), make_geometry(raw.shape(), {{0, 0, width, height}}), {});
+    REQUIRE(statistics);
+    statistics->fingerprints.clear();  // of the stored bytes
+    return *statistics;
+  };
+  const SeriesStatistics base = measured(std::uint16_t{});
+  CHECK(base.regions[0].frame_hits[3] == 12);
+  CHECK(same_bits(base, measured(std::uint32_t{})));
+  CHECK(same_bits(base, measured(std::int32_t{})));
+  CHECK(same_bits(base, measured(float{})));
+  CHECK(same_bits(base, measured(double{})));
+}
+
 TEST_CASE("extreme codes alternating between 0 and 65535 do not overflow") {
   const RawFrames<std::uint16_t> raw(128, 32, make_frames<std::uint16_t>(128, 32, 8, [](int f, int x, int y) {
                                        return (f + x + y) % 2 == 0 ? 0 : 65535;
@@ -210,11 +376,16 @@ TEST_CASE("extreme codes alternating between 0 and 65535 do not overflow") {
 }
 
 TEST_CASE("the same bits for one and three threads and for portable and special instructions") {
-  check_same_bits<std::uint16_t>();
-  check_same_bits<std::int16_t>();
-  check_same_bits<std::uint32_t>();
-  check_same_bits<float>();
-  check_same_bits<double>();
+  check_same_bits<std::uint8_t>(100, 4, 0, 250);
+  check_same_bits<std::uint16_t>(1000, 30, 0, 4000);
+  check_same_bits<std::int16_t>(1000, 30, 0, 4000);
+  check_same_bits<std::uint32_t>(1000, 30, 0, 4000);
+  check_same_bits<float>(1000, 30, 0, 4000);
+  check_same_bits<double>(1000, 30, 0, 4000);
+  // Wide cells: light that climbs steeply, hits that reach the top code.
+  check_same_bits<std::uint16_t>(2000, 200, 190, 65535);
+  check_same_bits<std::int32_t>(2000, 200, 5000, 2e9);
+  check_same_bits<double>(2000.5, 200, 5000, 2e9);
 }
 
 TEST_CASE("hits leave the variance and pixels that blink stay in") {
