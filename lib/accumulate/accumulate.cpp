@@ -19,13 +19,42 @@ namespace {
 
 using Hash = std::array<std::uint64_t, 2>;
 
-/// What one band gives: per cell its statistics in each group and its squared totals, per frame its row sums
-/// and its part of the hash.
+/// Consecutive bands, one below the other, whose rows are read together: one band where rows can be had as
+/// they are, several where they come in pieces.
+struct Item {
+  int first_band = 0;
+  int bands = 0;
+  int y = 0;
+  int rows = 0;
+};
+
+std::vector<Item> make_items(const Geometry& geometry, int rows_apart) {
+  constexpr int kRows = 32;  // a decoder is asked for so many at least
+  const int wanted = rows_apart > 0 ? (kRows + rows_apart - 1) / rows_apart * rows_apart : 0;
+  std::vector<Item> items;
+  for (std::size_t i = 0; i < geometry.bands.size(); ++i) {
+    const Band& band = geometry.bands[i];
+    const bool goes_on = !items.empty() && items.back().y + items.back().rows == band.y &&
+                         (items.back().rows < wanted ||
+                          (wanted > 0 && band.y % rows_apart != 0 && items.back().rows < 2 * wanted));
+    if (!goes_on) items.push_back({static_cast<int>(i), 0, band.y, 0});
+    ++items.back().bands;
+    items.back().rows += band.height;
+  }
+  return items;
+}
+
+/// What one band gives: per cell its statistics in each group and its squared totals, per frame its row sums.
 struct BandResult {
   std::vector<CellStatistics> cells;  ///< [cell][group]
   std::vector<CellSquares> squares;   ///< [cell]
   std::vector<double> row_sums;       ///< [region of the band][frame][row of the band] sum over columns of y
-  std::vector<Hash> hashes;           ///< [frame]
+};
+
+/// And per frame its part of the hash.
+struct ItemResult {
+  std::vector<BandResult> bands;
+  std::vector<Hash> hashes;  ///< [frame]
 };
 
 /// Memory that is not filled with zeros before use, at the begin of a line of the cache.
@@ -53,7 +82,7 @@ class RawMemory {
 /// What one thread needs while it works on a band.
 struct BandBuffers {
   RawMemory rows;       ///< [frame of the group][row][column]
-  RawMemory totals;     ///< CellTotals [cell]
+  RawMemory totals;     ///< CellTotals [band of the item][cell]
   RawMemory workspace;  ///< of the kernels
   std::vector<std::vector<std::pair<double, double>>>
       known;  ///< [region][block] lowest and highest code seen by this thread
@@ -62,12 +91,20 @@ struct BandBuffers {
 class Accumulator {
  public:
   Accumulator(const FrameStack& frames, const Geometry& geometry, const AccumulateOptions& options);
-  Status measure(int band, BandBuffers& buffers, BandResult& out) const;
-  void add(int band, const BandResult& result);
+  Status measure(const Item& item, int worker, BandBuffers& buffers, ItemResult& out) const;
+  void add(const Item& item, const ItemResult& result);
   SeriesStatistics finish();
-  int groups() const { return static_cast<int>(sizes_.size()); }
 
  private:
+  Status read_group(
+      const Item& item, std::size_t group, int worker, std::byte* pixels, ItemResult& out) const;
+  Status measure_cells(const Band& band,
+                       std::size_t group,
+                       const std::byte* pixels,
+                       std::size_t frame_bytes,
+                       CellTotals* totals,
+                       BandBuffers& buffers,
+                       BandResult& out) const;
   void sum_rows(const Band& band, BandResult& result) const;
   void add_cell(const Band& band, const Cell& cell, const BandResult& result, std::size_t index);
 
@@ -118,63 +155,98 @@ Accumulator::Accumulator(const FrameStack& frames, const Geometry& geometry, con
   }
 }
 
-Status Accumulator::measure(int band_index, BandBuffers& buffers, BandResult& out) const {
-  const Band& band = geometry_.bands[static_cast<std::size_t>(band_index)];
+/// The rows of the item in each frame of the group, one frame behind the other, and their hashes.
+Status Accumulator::read_group(
+    const Item& item, std::size_t group, int worker, std::byte* pixels, ItemResult& out) const {
   const FrameShape shape = frames_.shape();
-  const std::size_t pixel_bytes = bytes_per_pixel(shape.type);
-  const std::size_t row_bytes = static_cast<std::size_t>(shape.width) * pixel_bytes;
-  const std::size_t frame_bytes = row_bytes * static_cast<std::size_t>(band.height);
-  std::byte* const pixels = buffers.rows.room_for(frame_bytes * kGroupFrames + kReadBeyond);
-  const bool one_group = sizes_.size() == 1;
-  // Plain numbers, written before they are read.
-  auto* const totals = reinterpret_cast<CellTotals*>(
-      buffers.totals.room_for(sizeof(CellTotals) * (one_group ? std::size_t{1} : band.cells.size())));
-  void* const workspace = buffers.workspace.room_for(kernels_.workspace_bytes);
-  out.cells.resize(band.cells.size() * sizes_.size());
-  out.squares.resize(band.cells.size());
-  out.hashes.assign(hashes_.size(), Hash{});
-
-  int first = 0;
-  for (std::size_t g = 0; g < sizes_.size(); ++g) {
-    CellInput input;
-    input.stride = shape.width;
-    input.frames = sizes_[g];
-    input.height = band.height;
-    input.first_group = g == 0;
-    input.last_group = g + 1 == sizes_.size();
-    input.hit_threshold = sizes_[g] >= options_.fewest_frames_for_hits ? options_.hit_threshold : 0.0;
-    for (int f = 0; f < sizes_[g]; ++f) {
-      std::byte* rows = pixels + frame_bytes * static_cast<std::size_t>(f);
-      if (const Status read = frames_.read_rows(first + f, band.y, band.height, rows); !read) return read;
-      Hash& hash = out.hashes[static_cast<std::size_t>(first + f)];
-      for (int y = 0; y < band.height; ++y) {
+  const std::size_t row_bytes = static_cast<std::size_t>(shape.width) * bytes_per_pixel(shape.type);
+  for (int f = 0; f < sizes_[group]; ++f) {
+    const int frame = out_.regions.front().groups[group].first_frame + f;
+    if (const Status read = frames_.read_rows(frame, item.y, item.rows, pixels, worker); !read) return read;
+    Hash& hash = out.hashes[static_cast<std::size_t>(frame)];
+    for (int b = item.first_band; b < item.first_band + item.bands; ++b) {
+      const Band& band = geometry_.bands[static_cast<std::size_t>(b)];
+      for (int y = 0; y < band.height; ++y, pixels += row_bytes) {
         if (!band.hashed[static_cast<std::size_t>(y)]) continue;
-        const Hash row = kernels_.hash(rows + row_bytes * static_cast<std::size_t>(y), row_bytes,
-                                       static_cast<std::uint64_t>(band.y + y));
+        const Hash row = kernels_.hash(pixels, row_bytes, static_cast<std::uint64_t>(band.y + y));
         hash = {hash[0] + row[0], hash[1] + row[1]};
       }
     }
-    for (std::size_t c = 0; c < band.cells.size(); ++c) {
-      const Cell& cell = band.cells[c];
-      input.width = cell.width;
-      for (int f = 0; f < sizes_[g]; ++f)
-        input.pixels[static_cast<std::size_t>(f)] = pixels + frame_bytes * static_cast<std::size_t>(f) +
-                                                    pixel_bytes * static_cast<std::size_t>(cell.x);
-      CellStatistics& statistics = out.cells[c * sizes_.size() + g];
-      auto& [lowest, highest] =
-          buffers.known[static_cast<std::size_t>(cell.region)][static_cast<std::size_t>(cell.block)];
-      input.known_lowest = lowest;
-      input.known_highest = highest;
-      kernels_.measure(input, totals[one_group ? 0 : c], workspace, statistics, out.squares[c]);
-      if (statistics.bad_frame >= 0)
-        return frames_.error_at(first + statistics.bad_frame,
-                                "found a pixel that is not a finite number, expected finite pixels");
-      lowest = std::min(lowest, statistics.lowest.code);
-      highest = std::max(highest, statistics.highest.code);
-    }
-    first += sizes_[g];
   }
-  sum_rows(band, out);
+  return Done{};
+}
+
+/// `pixels`: the band's first row in the first frame of the group; the others are `frame_bytes` apart.
+Status Accumulator::measure_cells(const Band& band,
+                                  std::size_t group,
+                                  const std::byte* pixels,
+                                  std::size_t frame_bytes,
+                                  CellTotals* totals,
+                                  BandBuffers& buffers,
+                                  BandResult& out) const {
+  const std::size_t pixel_bytes = bytes_per_pixel(frames_.shape().type);
+  const bool one_group = sizes_.size() == 1;
+  void* const workspace = buffers.workspace.room_for(kernels_.workspace_bytes);
+  CellInput input;
+  input.stride = frames_.shape().width;
+  input.frames = sizes_[group];
+  input.height = band.height;
+  input.first_group = group == 0;
+  input.last_group = group + 1 == sizes_.size();
+  input.hit_threshold = sizes_[group] >= options_.fewest_frames_for_hits ? options_.hit_threshold : 0.0;
+  for (std::size_t c = 0; c < band.cells.size(); ++c) {
+    const Cell& cell = band.cells[c];
+    input.width = cell.width;
+    for (int f = 0; f < input.frames; ++f)
+      input.pixels[static_cast<std::size_t>(f)] =
+          pixels + frame_bytes * static_cast<std::size_t>(f) + pixel_bytes * static_cast<std::size_t>(cell.x);
+    CellStatistics& statistics = out.cells[c * sizes_.size() + group];
+    auto& [lowest, highest] =
+        buffers.known[static_cast<std::size_t>(cell.region)][static_cast<std::size_t>(cell.block)];
+    input.known_lowest = lowest;
+    input.known_highest = highest;
+    kernels_.measure(input, totals[one_group ? 0 : c], workspace, statistics, out.squares[c]);
+    if (statistics.bad_frame >= 0)
+      return frames_.error_at(out_.regions.front().groups[group].first_frame + statistics.bad_frame,
+                              "found a pixel that is not a finite number, expected finite pixels");
+    lowest = std::min(lowest, statistics.lowest.code);
+    highest = std::max(highest, statistics.highest.code);
+  }
+  return Done{};
+}
+
+Status Accumulator::measure(const Item& item, int worker, BandBuffers& buffers, ItemResult& out) const {
+  const FrameShape shape = frames_.shape();
+  const std::size_t row_bytes = static_cast<std::size_t>(shape.width) * bytes_per_pixel(shape.type);
+  const std::size_t frame_bytes = row_bytes * static_cast<std::size_t>(item.rows);
+  std::byte* const pixels = buffers.rows.room_for(frame_bytes * kGroupFrames + kReadBeyond);
+  out.bands.resize(static_cast<std::size_t>(item.bands));
+  out.hashes.assign(hashes_.size(), Hash{});
+  const Band* const bands = geometry_.bands.data() + item.first_band;
+  std::size_t cells = 0;
+  for (int b = 0; b < item.bands; ++b) {
+    BandResult& result = out.bands[static_cast<std::size_t>(b)];
+    result.cells.resize(bands[b].cells.size() * sizes_.size());
+    result.squares.resize(bands[b].cells.size());
+    cells += bands[b].cells.size();
+  }
+  const bool one_group = sizes_.size() == 1;
+  // Plain numbers, written before they are read.
+  auto* const totals = reinterpret_cast<CellTotals*>(
+      buffers.totals.room_for(sizeof(CellTotals) * (one_group ? std::size_t{1} : cells)));
+  for (std::size_t g = 0; g < sizes_.size(); ++g) {
+    if (const Status read = read_group(item, g, worker, pixels, out); !read) return read;
+    const std::byte* rows = pixels;
+    CellTotals* of_band = totals;
+    for (int b = 0; b < item.bands; ++b) {
+      const Status measured = measure_cells(bands[b], g, rows, frame_bytes, of_band, buffers,
+                                            out.bands[static_cast<std::size_t>(b)]);
+      if (!measured) return measured;
+      rows += row_bytes * static_cast<std::size_t>(bands[b].height);
+      if (!one_group) of_band += bands[b].cells.size();
+    }
+  }
+  for (int b = 0; b < item.bands; ++b) sum_rows(bands[b], out.bands[static_cast<std::size_t>(b)]);
   return Done{};
 }
 
@@ -258,16 +330,19 @@ void Accumulator::add_cell(const Band& band, const Cell& cell, const BandResult&
   for (int x = 0; x < cell.width; ++x) columns[x] += sums[x] + level;
 }
 
-void Accumulator::add(int band_index, const BandResult& result) {
-  const Band& band = geometry_.bands[static_cast<std::size_t>(band_index)];
-  for (std::size_t c = 0; c < band.cells.size(); ++c) add_cell(band, band.cells[c], result, c);
-  const double* sums = result.row_sums.data();
-  for (const int index : band.regions) {
-    RegionStatistics& region = out_.regions[static_cast<std::size_t>(index)];
-    const auto rows = static_cast<std::size_t>(region.rect.height);
-    for (std::size_t f = 0; f < hashes_.size(); ++f, sums += band.height)
-      std::copy_n(sums, band.height,
-                  region.row_sums.data() + f * rows + static_cast<std::size_t>(band.y - region.rect.y));
+void Accumulator::add(const Item& item, const ItemResult& result) {
+  for (int b = 0; b < item.bands; ++b) {
+    const Band& band = geometry_.bands[static_cast<std::size_t>(item.first_band + b)];
+    const BandResult& part = result.bands[static_cast<std::size_t>(b)];
+    for (std::size_t c = 0; c < band.cells.size(); ++c) add_cell(band, band.cells[c], part, c);
+    const double* sums = part.row_sums.data();
+    for (const int index : band.regions) {
+      RegionStatistics& region = out_.regions[static_cast<std::size_t>(index)];
+      const auto rows = static_cast<std::size_t>(region.rect.height);
+      for (std::size_t f = 0; f < hashes_.size(); ++f, sums += band.height)
+        std::copy_n(sums, band.height,
+                    region.row_sums.data() + f * rows + static_cast<std::size_t>(band.y - region.rect.y));
+    }
   }
   for (std::size_t f = 0; f < hashes_.size(); ++f)
     hashes_[f] = {hashes_[f][0] + result.hashes[f][0], hashes_[f][1] + result.hashes[f][1]};
@@ -307,7 +382,10 @@ std::vector<double> different_codes(const std::byte* bytes, std::size_t count) {
 }
 
 /// Codes that occur in the middle rows of the first region in the first frame, in about 65 000 pixels.
-Status sample_codes(const FrameStack& frames, const Geometry& geometry, std::vector<double>& out) {
+Status sample_codes(const FrameStack& frames,
+                    const Geometry& geometry,
+                    int worker,
+                    std::vector<double>& out) {
   constexpr int kSamplePixels = 65536;
   const FrameShape shape = frames.shape();
   const Rect& rect = geometry.grids.front().rect;
@@ -316,7 +394,7 @@ Status sample_codes(const FrameStack& frames, const Geometry& geometry, std::vec
   const std::size_t count = static_cast<std::size_t>(shape.width) * static_cast<std::size_t>(rows);
   RawMemory memory;
   std::byte* bytes = memory.room_for(count * bytes_per_pixel(shape.type));
-  if (const Status read = frames.read_rows(0, y, rows, bytes); !read) return read;
+  if (const Status read = frames.read_rows(0, y, rows, bytes, worker); !read) return read;
   switch (shape.type) {
     case PixelType::u8:
       out = different_codes<std::uint8_t>(bytes, count);
@@ -382,14 +460,15 @@ Result<SeriesStatistics> accumulate(const FrameStack& frames,
 
   // Results that came before their turn wait here; as bands are handed out in order, there are few.
   std::mutex guard;
-  std::map<int, std::unique_ptr<BandResult>> waiting;
-  std::vector<std::unique_ptr<BandResult>> spare;
+  std::map<int, std::unique_ptr<ItemResult>> waiting;
+  std::vector<std::unique_ptr<ItemResult>> spare;
   int next = 0;
-  const auto bands = static_cast<int>(geometry.bands.size());
+  const std::vector<Item> items = make_items(geometry, frames.rows_apart());
+  const auto count = static_cast<int>(items.size());
   std::vector<double> codes;
-  const Status done = for_each_item(bands + 1, options.threads, [&](int band, int worker) -> Status {
-    if (band == bands) return sample_codes(frames, geometry, codes);
-    std::unique_ptr<BandResult> result;
+  const Status done = for_each_item(count + 1, options.threads, [&](int number, int worker) -> Status {
+    if (number == count) return sample_codes(frames, geometry, worker, codes);
+    std::unique_ptr<ItemResult> result;
     {
       const std::lock_guard lock(guard);
       if (!spare.empty()) {
@@ -397,14 +476,14 @@ Result<SeriesStatistics> accumulate(const FrameStack& frames,
         spare.pop_back();
       }
     }
-    if (!result) result = std::make_unique<BandResult>();
-    if (const Status measured = accumulator.measure(band, buffers[static_cast<std::size_t>(worker)], *result);
-        !measured)
-      return measured;
+    if (!result) result = std::make_unique<ItemResult>();
+    const Status measured = accumulator.measure(items[static_cast<std::size_t>(number)], worker,
+                                                buffers[static_cast<std::size_t>(worker)], *result);
+    if (!measured) return measured;
     const std::lock_guard lock(guard);
-    waiting.emplace(band, std::move(result));
+    waiting.emplace(number, std::move(result));
     for (auto turn = waiting.find(next); turn != waiting.end(); turn = waiting.find(++next)) {
-      accumulator.add(next, *turn->second);
+      accumulator.add(items[static_cast<std::size_t>(next)], *turn->second);
       spare.push_back(std::move(turn->second));
       waiting.erase(turn);
     }

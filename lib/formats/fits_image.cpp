@@ -10,7 +10,6 @@
 #include "base/interrupt.h"
 #include "base/text.h"
 #include "formats/acquisition_time.h"
-#include "formats/fits_tiles.h"
 #include "formats/frame_limits.h"
 
 namespace evenfield {
@@ -314,14 +313,20 @@ Result<FitsImages> read_fits_images(const std::filesystem::path& path,
   return out;
 }
 
-Status read_fits_plane(fitsfile* handle, const FitsImage& image, std::uint64_t plane, void* pixels) {
+int fits_rows_apart(const FitsImage& image) {
+  if (image.tile.empty() || image.gzip || is_floating(image.shape.type)) return 0;
+  for (std::size_t axis = 2; axis < image.tile.size(); ++axis)
+    if (image.tile[axis] != 1) return 0;
+  const std::uint64_t bytes = static_cast<std::uint64_t>(image.tile[1]) *
+                              static_cast<std::uint64_t>(image.axes[0]) * bytes_per_pixel(image.shape.type);
+  return image.tile[1] < image.axes[1] && bytes <= kMostBytesApart ? static_cast<int>(image.tile[1]) : 0;
+}
+
+Status read_fits_rows(
+    fitsfile* handle, const FitsImage& image, std::uint64_t plane, int first_row, int rows, void* pixels) {
   int status = 0;
   fits_movabs_hdu(handle, image.hdu, nullptr, &status);
   if (status != 0) return Error{Errc::input, {}, "cannot be decoded: " + fits_words(status)};
-  if (!image.tile.empty()) {
-    Status whole = check_gzip_tiles(handle, image, plane);
-    if (!whole) return whole;
-  }
   AxisNumbers first{};
   AxisNumbers last{};
   first[0] = 1;
@@ -332,18 +337,18 @@ Status read_fits_plane(fitsfile* handle, const FitsImage& image, std::uint64_t p
     plane /= length;
   }
   // In pieces of whole tiles, so that a wish to stop is seen in the middle of a large frame.
-  const long height = image.axes[1];
+  const long end = std::min(static_cast<long>(first_row) + rows, image.axes[1]);
   const long tile_height = image.tile.empty() ? 1 : image.tile[1];
   const std::size_t row_bytes = static_cast<std::size_t>(image.axes[0]) * bytes_per_pixel(image.shape.type);
   const long piece_rows =
       std::max(static_cast<long>(kPieceBytes / row_bytes) / tile_height, 1L) * tile_height;
   bool undefined = false;
-  for (long y = 0; y < height && status == 0; y += piece_rows) {
+  for (long y = first_row; y < end && status == 0; y += piece_rows) {
     if (interrupt_requested()) return interrupted();
     first[1] = y + 1;
-    last[1] = std::min(y + piece_rows, height);
-    auto* rows = static_cast<unsigned char*>(pixels) + static_cast<std::size_t>(y) * row_bytes;
-    undefined = read_piece(handle, image.shape.type, first, last, rows, &status) || undefined;
+    last[1] = std::min(y + piece_rows, end);
+    auto* to = static_cast<unsigned char*>(pixels) + static_cast<std::size_t>(y - first_row) * row_bytes;
+    undefined = read_piece(handle, image.shape.type, first, last, to, &status) || undefined;
   }
   if (status != 0) return Error{Errc::input, {}, "cannot be decoded: " + fits_words(status)};
   int bits = 0;

@@ -42,8 +42,12 @@ Result<FitsImages> read_fits_images(const std::filesystem::path& path,
                                     fitsfile* handle,
                                     const std::vector<FitsHdu>& parts);
 
-/// Plane `plane` (from 0) of `image` as native pixels. Error (input), without place: file and page are the
-/// caller's.
-Status read_fits_plane(fitsfile* handle, const FitsImage& image, std::uint64_t plane, void* pixels);
+/// Rows of a compressed image that decode apart from the others (see FramePage), or 0.
+int fits_rows_apart(const FitsImage& image);
+
+/// Rows [first_row, first_row + rows) of plane `plane` (from 0) of `image` as native pixels. Tiles that gzip
+/// packed must have been checked. Error (input), without place: file and page are the caller's.
+Status read_fits_rows(
+    fitsfile* handle, const FitsImage& image, std::uint64_t plane, int first_row, int rows, void* pixels);
 
 }  // namespace evenfield

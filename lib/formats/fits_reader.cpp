@@ -1,12 +1,14 @@
 #include "formats/fits_reader.h"
 
 #include <algorithm>
+#include <limits>
 #include <utility>
 #include <vector>
 
 #include "formats/disk_file.h"
 #include "formats/fits_image.h"
 #include "formats/fits_layout.h"
+#include "formats/fits_tiles.h"
 #include "formats/gunzip.h"
 #include "formats/raw_pixels.h"
 
@@ -68,7 +70,10 @@ Result<OpenFits> open_file(const std::filesystem::path& path, bool packed, Unpac
 FramePage page_of(const FitsImage& image, std::uint64_t plane, bool packed) {
   FramePage page;
   page.shape = image.shape;
-  if (!image.raw) return page;
+  if (!image.raw) {
+    if (!packed) page.rows_apart = fits_rows_apart(image);
+    return page;
+  }
   page.encoding = image.encoding;
   if (packed) return page;
   const std::uint64_t bytes = static_cast<std::uint64_t>(image.shape.width) *
@@ -88,6 +93,10 @@ class FitsDecoder : public FrameDecoder {
   }
 
   Status decode(int page, void* pixels) override {
+    return decode_rows(page, 0, std::numeric_limits<int>::max(), pixels);
+  }
+
+  Status decode_rows(int page, int first_row, int rows, void* pixels) override {
     const Where where{path_, {}, page, {}};
     if (page < 1 || static_cast<std::uint64_t>(page) > pages_) {
       return Error{Errc::input, where,
@@ -98,8 +107,9 @@ class FitsDecoder : public FrameDecoder {
     const auto number = static_cast<std::size_t>(after - first_pages_.begin()) - 1;
     const FitsImage& image = open_.images[number];
     const std::uint64_t plane = index - first_pages_[number];
+    const int count = std::min(rows, image.shape.height - first_row);
     Status read = image.raw ? read_raw_frame(open_.bytes, page_of(image, plane, false), pixels)
-                            : read_fits_plane(open_.handle.get(), image, plane, pixels);
+                            : decode_packed(page, image, plane, first_row, count, pixels);
     if (read) return read;
     Error error = read.error();
     error.where.file = path_;
@@ -108,8 +118,22 @@ class FitsDecoder : public FrameDecoder {
   }
 
  private:
+  Status decode_packed(
+      int page, const FitsImage& image, std::uint64_t plane, int first_row, int rows, void* pixels) {
+    if (!image.tile.empty() && checked_page_ != page) {
+      int status = 0;
+      fits_movabs_hdu(open_.handle.get(), image.hdu, nullptr, &status);
+      if (status != 0) return Error{Errc::input, {}, "cannot be decoded: " + fits_words(status)};
+      Status whole = check_gzip_tiles(open_.handle.get(), image, plane);
+      if (!whole) return whole;
+      checked_page_ = page;
+    }
+    return read_fits_rows(open_.handle.get(), image, plane, first_row, rows, pixels);
+  }
+
   std::filesystem::path path_;
   OpenFits open_;
+  int checked_page_ = 0;                    ///< its gzip tiles are whole
   std::vector<std::uint64_t> first_pages_;  ///< index of each image's first plane
   std::uint64_t pages_ = 0;
 };

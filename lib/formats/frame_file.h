@@ -4,7 +4,8 @@
 /// A frame is one grey-scale image: a page of a TIFF file, or a plane of an image of a FITS file. Pages are
 /// numbered from 1 in file order; a FITS cube counts plane by plane. Only headers are read by inspect().
 /// Pixels that lie in the file uncompressed and row by row are described by extents, so that anyone can read
-/// them by offset; all other pixels are decoded a whole frame at a time.
+/// them by offset; all other pixels are decoded, a whole frame at a time or, where the file allows it, some
+/// rows.
 
 #include <cstdint>
 #include <filesystem>
@@ -36,7 +37,13 @@ struct FramePage {
   FrameShape shape;
   std::vector<RawExtent> extents;  ///< ascending, covering all rows, every byte inside the file; or empty
   RawEncoding encoding;
+  /// Of a frame without extents: so many rows, from a multiple of it on, decode apart from all others at no
+  /// extra cost. 0: they do not, or they are very many.
+  int rows_apart = 0;
 };
+
+/// Rows that make up more bytes than this are not worth decoding apart.
+inline constexpr std::uint64_t kMostBytesApart = std::uint64_t{1} << 20U;
 
 enum class FileFormat { tiff, fits };
 
@@ -65,6 +72,9 @@ class FrameDecoder {
   /// Frame `page` (from 1) in whole, as native pixels of its shape, rows in order, into `pixels`, which holds
   /// width x height x bytes_per_pixel bytes. Works for every page, raw ones too.
   virtual Status decode(int page, void* pixels) = 0;
+  /// Rows [first_row, first_row + rows) of a page with rows_apart: both are multiples of it, or the rows end
+  /// with the frame.
+  virtual Status decode_rows(int page, int first_row, int rows, void* pixels) = 0;
 };
 // Virtual, because two libraries' handles hide behind it.
 

@@ -167,6 +167,10 @@ class DirectoryReader {
       return wrong(counts_tag(), "none or contradictory ones (" + handle_.warnings() + ")",
                    "the size of every strip or tile");
     }
+    const std::uint64_t apart = static_cast<std::uint64_t>(page_.block_height) *
+                                static_cast<std::uint64_t>(shape.width) * pixel_bytes;
+    if ((!raw_ || page_.tiled) && page_.block_height < shape.height && apart <= kMostBytesApart)
+      page_.frame.rows_apart = page_.block_height;
     page_.frame.encoding.swap_bytes = TIFFIsByteSwapped(tiff_) != 0 && pixel_bytes > 1;
     return Done{};
   }

@@ -85,36 +85,53 @@ class TiffDecoder : public FrameDecoder {
       : file_(file), bytes_(std::move(bytes)), handle_(std::move(handle)) {}
 
   Status decode(int page, void* pixels) override {
+    Status known = check_number(page);
+    if (!known) return known;
+    const FramePage& frame = file_.pages[static_cast<std::size_t>(page - 1)];
+    if (frame.extents.empty()) return decode_rows(page, 0, frame.shape.height, pixels);
+    Status status = read_raw_frame(bytes_, frame, pixels);
+    if (status) return status;
+    Error error = status.error();
+    error.where.page = page;
+    return error;
+  }
+
+  Status decode_rows(int page, int first_row, int rows, void* pixels) override {
+    Status there = check_number(page);
+    if (there) there = go_to(page);
+    if (!there) return there;
+    if (now_page_ != page) {
+      // Read again: nothing of what is decoded may rest on a file that has changed since it was inspected.
+      now_page_ = 0;
+      auto now = read_tiff_page(handle_, file_.path, bytes_.size(), page);
+      if (!now) return now.error();
+      if (now->frame.shape != file_.pages[static_cast<std::size_t>(page - 1)].shape)
+        return damaged(file_.path, page, handle_, "changed while it was read");
+      now_ = std::move(*now);
+      now_page_ = page;
+    }
+    const int end = std::min(first_row + rows, now_.frame.shape.height);
+    return now_.tiled ? decode_tiles(page, first_row, end, pixels)
+                      : decode_strips(page, first_row, end, pixels);
+  }
+
+ private:
+  Status check_number(int page) const {
     if (page < 1 || page > static_cast<int>(file_.pages.size())) {
       return Error{Errc::input,
                    {file_.path, {}, page, {}},
                    "found " + std::to_string(file_.pages.size()) + " pages, expected this one among them"};
     }
-    const FramePage& frame = file_.pages[static_cast<std::size_t>(page - 1)];
-    if (!frame.extents.empty()) {
-      Status status = read_raw_frame(bytes_, frame, pixels);
-      if (status) return status;
-      Error error = status.error();
-      error.where.page = page;
-      return error;
-    }
-    Status there = go_to(page);
-    if (!there) return there;
-    // Read again: nothing of what is decoded may rest on a file that has changed since it was inspected.
-    const auto now = read_tiff_page(handle_, file_.path, bytes_.size(), page);
-    if (!now) return now.error();
-    if (now->frame.shape != frame.shape)
-      return damaged(file_.path, page, handle_, "changed while it was read");
-    return now->tiled ? decode_tiles(page, *now, pixels) : decode_strips(page, *now, pixels);
+    return Done{};
   }
 
- private:
   /// Makes frame `page` the current directory. Pages are looked for once, on from the farthest one seen.
   Status go_to(int page) {
     handle_.forget();
     TIFF* tiff = handle_.get();
     const auto wanted = static_cast<std::size_t>(page);
     while (directories_.size() < wanted) {
+      now_page_ = 0;
       if (walked_ > 0) {
         if (TIFFCurrentDirOffset(tiff) != frontier_ && TIFFSetSubDirectory(tiff, frontier_) == 0)
           return lost(page);
@@ -128,6 +145,7 @@ class TiffDecoder : public FrameDecoder {
     }
     const std::uint64_t offset = directories_[wanted - 1];
     if (TIFFCurrentDirOffset(tiff) != offset) {
+      now_page_ = 0;
       handle_.forget();
       if (TIFFSetSubDirectory(tiff, offset) == 0) return lost(page);
     }
@@ -136,15 +154,16 @@ class TiffDecoder : public FrameDecoder {
 
   Error lost(int page) const { return damaged(file_.path, page, handle_, "its directory cannot be read"); }
 
-  Status decode_strips(int page, const TiffPage& now, void* pixels) {
-    const FrameShape& shape = now.frame.shape;
+  /// Rows [begin, end); begin is the first of a strip.
+  Status decode_strips(int page, int begin, int end, void* pixels) {
+    const FrameShape& shape = now_.frame.shape;
     const std::size_t row_bytes = static_cast<std::size_t>(shape.width) * bytes_per_pixel(shape.type);
     handle_.forget();
-    std::uint32_t strip = 0;
-    for (int y = 0; y < shape.height; y += now.block_height, ++strip) {
-      const auto rows = static_cast<std::size_t>(std::min(now.block_height, shape.height - y));
+    auto strip = static_cast<std::uint32_t>(begin / now_.block_height);
+    for (int y = begin; y < end; y += now_.block_height, ++strip) {
+      const auto rows = static_cast<std::size_t>(std::min(now_.block_height, shape.height - y));
       const auto bytes = static_cast<tmsize_t>(rows * row_bytes);
-      char* to = static_cast<char*>(pixels) + static_cast<std::size_t>(y) * row_bytes;
+      char* to = static_cast<char*>(pixels) + static_cast<std::size_t>(y - begin) * row_bytes;
       if (interrupt_requested()) return interrupted();
       if (bytes > kLargeStrip) {
         Status status = decode_by_rows(page, y, static_cast<int>(rows), to);
@@ -173,27 +192,29 @@ class TiffDecoder : public FrameDecoder {
     return Done{};
   }
 
-  Status decode_tiles(int page, const TiffPage& now, void* pixels) {
-    const FrameShape& shape = now.frame.shape;
+  /// Rows [begin, end); begin is the first of a tile.
+  Status decode_tiles(int page, int begin, int end, void* pixels) {
+    const FrameShape& shape = now_.frame.shape;
     const std::size_t pixel_bytes = bytes_per_pixel(shape.type);
     const std::size_t row_bytes = static_cast<std::size_t>(shape.width) * pixel_bytes;
-    const std::size_t tile_row_bytes = static_cast<std::size_t>(now.block_width) * pixel_bytes;
-    tile_.resize(tile_row_bytes * static_cast<std::size_t>(now.block_height));
+    const std::size_t tile_row_bytes = static_cast<std::size_t>(now_.block_width) * pixel_bytes;
+    tile_.resize(tile_row_bytes * static_cast<std::size_t>(now_.block_height));
     const auto bytes = static_cast<tmsize_t>(tile_.size());
     handle_.forget();
-    std::uint32_t tile = 0;
-    for (int y = 0; y < shape.height; y += now.block_height) {
-      for (int x = 0; x < shape.width; x += now.block_width, ++tile) {
+    const int across = (shape.width - 1) / now_.block_width + 1;
+    auto tile = static_cast<std::uint32_t>(begin / now_.block_height * across);
+    for (int y = begin; y < end; y += now_.block_height) {
+      for (int x = 0; x < shape.width; x += now_.block_width, ++tile) {
         if (interrupt_requested()) return interrupted();
         if (TIFFReadEncodedTile(handle_.get(), tile, tile_.data(), bytes) != bytes ||
             !handle_.errors().empty()) {
           return damaged(file_.path, page, handle_,
                          "tile " + std::to_string(tile + 1) + " cannot be decoded");
         }
-        const int rows = std::min(now.block_height, shape.height - y);
-        const auto columns = static_cast<std::size_t>(std::min(now.block_width, shape.width - x));
+        const int rows = std::min(now_.block_height, shape.height - y);
+        const auto columns = static_cast<std::size_t>(std::min(now_.block_width, shape.width - x));
         for (int row = 0; row < rows; ++row) {
-          std::memcpy(static_cast<char*>(pixels) + static_cast<std::size_t>(y + row) * row_bytes +
+          std::memcpy(static_cast<char*>(pixels) + static_cast<std::size_t>(y - begin + row) * row_bytes +
                           static_cast<std::size_t>(x) * pixel_bytes,
                       tile_.data() + static_cast<std::size_t>(row) * tile_row_bytes, columns * pixel_bytes);
         }
@@ -208,6 +229,8 @@ class TiffDecoder : public FrameDecoder {
   std::vector<std::uint64_t> directories_;  ///< of the frames seen so far
   std::uint64_t frontier_ = 0;              ///< directory read last on the way through the file
   std::uint64_t walked_ = 0;
+  TiffPage now_;  ///< the current directory, if it is that of a page
+  int now_page_ = 0;
   std::vector<char> tile_;
 };
 

@@ -4,6 +4,7 @@
 
 #include <algorithm>
 #include <atomic>
+#include <cstring>
 #include <filesystem>
 #include <map>
 #include <optional>
@@ -27,6 +28,29 @@ struct Plane {
   bool scratch = false;
 };
 
+/// What one worker decodes pieces of frames with.
+struct PieceReader {
+  std::vector<std::unique_ptr<FrameDecoder>> decoders;  ///< [plane]
+  std::vector<std::byte> piece;
+};
+
+/// Descriptors of a decoder: ours and the library's.
+constexpr std::size_t kDecoderFiles = 2;
+/// Decoders cost memory too, up to 0.2 MB each: longer series are decoded frame by frame.
+constexpr std::size_t kMostDecoders = 32;
+
+/// Rows of a piece, if all frames of a series are made of pieces alike and a decoder for each may stay open;
+/// or 0.
+int rows_of_pieces(const std::vector<const FramePage*>& pages, int threads) {
+  const int rows = pages.front()->rows_apart;
+  for (const FramePage* page : pages)
+    if (!page->extents.empty() || page->rows_apart != rows) return 0;
+  rlimit limit{};
+  if (pages.size() > kMostDecoders || ::getrlimit(RLIMIT_NOFILE, &limit) != 0) return 0;
+  const std::size_t need = kDecoderFiles * pages.size() * static_cast<std::size_t>(std::max(threads, 1));
+  return 2 * need + 64 <= limit.rlim_cur ? rows : 0;
+}
+
 /// So many files of a series may stay open; the others are opened for each read. Decoders, the results and
 /// the program around need descriptors too, and two series may be open at a time.
 std::size_t files_kept_open(int threads) {
@@ -46,6 +70,9 @@ struct FrameStack::Impl {
   std::vector<std::optional<DiskFile>> open_files;  ///< aligned with paths; nothing where there are too many
   std::vector<Plane> planes;
   std::optional<DiskFile> scratch;
+  int rows_apart = 0;                       ///< of pieces that workers decode; 0: there are none
+  std::vector<const FrameFile*> files;      ///< aligned with paths
+  mutable std::vector<PieceReader> pieces;  ///< [worker]
   StackSharing sharing;
   std::uint64_t work = 0;                         ///< of the whole series
   mutable std::atomic<std::uint64_t> counted{0};  ///< of it, so far
@@ -74,7 +101,45 @@ Error FrameStack::error_at(int frame, std::string what) const {
       Errc::input, {impl_->paths[static_cast<std::size_t>(plane.file)], {}, plane.page, {}}, std::move(what)};
 }
 
-Status FrameStack::read_rows(int frame, int y, int rows, void* pixels) const {
+int FrameStack::rows_apart() const { return impl_->rows_apart; }
+
+namespace {
+
+Status decode_pieces(const FrameStack::Impl& stack, int frame, int y, int rows, void* pixels, int worker) {
+  PieceReader& reader = stack.pieces[static_cast<std::size_t>(worker)];
+  const auto number = static_cast<std::size_t>(frame);
+  const Plane& plane = stack.planes[number];
+  std::unique_ptr<FrameDecoder>& decoder = reader.decoders[number];
+  if (!decoder) {
+    auto opened = open_decoder(*stack.files[static_cast<std::size_t>(plane.file)]);
+    if (!opened) return opened.error();
+    decoder = std::move(*opened);
+  }
+  const std::size_t row_bytes =
+      static_cast<std::size_t>(stack.shape.width) * bytes_per_pixel(stack.shape.type);
+  const int begin = y / stack.rows_apart * stack.rows_apart;
+  const int end =
+      std::min((y + rows + stack.rows_apart - 1) / stack.rows_apart * stack.rows_apart, stack.shape.height);
+  if (begin == y && end == y + rows) return decoder->decode_rows(plane.page, begin, rows, pixels);
+  reader.piece.resize(std::max(reader.piece.size(), static_cast<std::size_t>(end - begin) * row_bytes));
+  const Status decoded = decoder->decode_rows(plane.page, begin, end - begin, reader.piece.data());
+  if (!decoded) return decoded;
+  std::memcpy(pixels, reader.piece.data() + static_cast<std::size_t>(y - begin) * row_bytes,
+              static_cast<std::size_t>(rows) * row_bytes);
+  return Done{};
+}
+
+}  // namespace
+
+Status FrameStack::read_rows(int frame, int y, int rows, void* pixels, int worker) const {
+  if (impl_->rows_apart > 0) {
+    if (impl_->sharing.give_up != nullptr && *impl_->sharing.give_up) return interrupted();
+    const Status decoded = decode_pieces(*impl_, frame, y, rows, pixels, worker);
+    if (decoded)
+      impl_->count((1 + kDecodingWork) * static_cast<std::uint64_t>(rows) *
+                   static_cast<std::uint64_t>(impl_->shape.width) * bytes_per_pixel(impl_->shape.type));
+    return decoded;
+  }
   const Plane& plane = impl_->planes[static_cast<std::size_t>(frame)];
   const auto width = static_cast<std::size_t>(impl_->shape.width);
   const std::size_t row_bytes = width * bytes_per_pixel(impl_->shape.type);
@@ -214,7 +279,8 @@ Result<FrameStack> open_stack(const Session& session,
   impl->sharing = sharing;
   impl->work = reading_work(session, series, files);
   std::map<int, int> known;  // file of the session -> file of this series
-  std::vector<const FrameFile*> used;
+  std::vector<const FrameFile*>& used = impl->files;
+  std::vector<const FramePage*> pages;
   std::vector<bool> read_raw;  // aligned with used
   for (const FrameReference& frame : series.frames) {
     const auto [entry, is_new] = known.try_emplace(frame.file, static_cast<int>(used.size()));
@@ -226,6 +292,7 @@ Result<FrameStack> open_stack(const Session& session,
     }
     const FramePage& page = file.pages[static_cast<std::size_t>(frame.page - 1)];
     if (!page.extents.empty()) read_raw[static_cast<std::size_t>(entry->second)] = true;
+    pages.push_back(&page);
     impl->planes.push_back({entry->second, frame.page, page.extents, page.encoding, false});
   }
   impl->open_files.resize(used.size());
@@ -235,6 +302,12 @@ Result<FrameStack> open_stack(const Session& session,
     auto file = DiskFile::open(used[i]->path);
     if (!file) return file.error();
     impl->open_files[i].emplace(std::move(*file));
+  }
+  impl->rows_apart = rows_of_pieces(pages, threads);
+  if (impl->rows_apart > 0) {
+    impl->pieces.resize(static_cast<std::size_t>(std::max(threads, 1)));
+    for (PieceReader& reader : impl->pieces) reader.decoders.resize(pages.size());
+    return FrameStack(std::move(impl));
   }
   if (const Status decoded = decode_to_scratch(*impl, used, threads); !decoded) return decoded.error();
   return FrameStack(std::move(impl));

@@ -34,9 +34,10 @@ struct StackSharing {
   const std::atomic<bool>* give_up = nullptr;  ///< once true, decoding ends with Errc::interrupted
 };
 
-/// `files` are those of the session, index-aligned with Session::files. Frames that have to be decoded are
-/// decoded here, on `threads` threads. Errors: input for files that do not decode; output when there is no
-/// room for the scratch file (it takes the size of the decoded frames of this one series).
+/// `files` are those of the session, index-aligned with Session::files; they must outlive the stack. Frames
+/// that have to be decoded as a whole are decoded here, on `threads` threads. Errors: input for files that do
+/// not decode; output when there is no room for the scratch file (it takes the size of the decoded frames of
+/// this one series).
 Result<FrameStack> open_stack(const Session& session,
                               const Series& series,
                               const std::vector<FrameFile>& files,

@@ -15,7 +15,28 @@ struct Layout {
 constexpr Layout kLayouts[] = {
     {"one strip", 83, 0}, {"strips of 7 rows", 7, 0}, {"default strips", 0, 0}, {"tiles of 32", 0, 32}};
 
-/// Writes, reads by the decoder and by extents, and expects the same bits from both.
+/// Pieces of rows that decode apart, in an order that jumps between frames, are the rows of the frames.
+void check_pieces(const FrameFile& file, const std::vector<Bytes>& stack) {
+  auto decoder = open_decoder(file);
+  REQUIRE(decoder);
+  const FrameShape& shape = file.pages[0].shape;
+  const std::size_t row_bytes = frame_bytes(shape) / static_cast<std::size_t>(shape.height);
+  for (int y = 0; y < shape.height;) {
+    const int rows_apart = file.pages[0].rows_apart;
+    // One piece, two pieces, or all that are left.
+    const int rows = std::min(rows_apart * (y % 2 + 1), shape.height - y);
+    for (std::size_t i = 0; i < stack.size(); ++i) {
+      Bytes rows_of_piece(row_bytes * static_cast<std::size_t>(rows));
+      const Status decoded = (*decoder)->decode_rows(static_cast<int>(i) + 1, y, rows, rows_of_piece.data());
+      REQUIRE_MESSAGE(decoded, to_line(decoded.error()));
+      REQUIRE(std::memcmp(rows_of_piece.data(), stack[i].data() + row_bytes * static_cast<std::size_t>(y),
+                          rows_of_piece.size()) == 0);
+    }
+    y += rows;
+  }
+}
+
+/// Writes, reads by the decoder, by extents and by pieces, and expects the same bits from all.
 void check_round_trip(const TestFolder& folder, PixelType type, const WriteOptions& options, bool raw) {
   const FrameShape shape{97, 83, type};
   const auto stack = made_up_stack(shape, 3);
@@ -33,6 +54,11 @@ void check_round_trip(const TestFolder& folder, PixelType type, const WriteOptio
     CHECK(file->pages[i].extents.empty() == !raw);
     if (raw) CHECK((read_by_extents(path, file->pages[i]) == stack[i]));
   }
+  const bool pieces = options.format == WriteFormat::tiff
+                          ? !raw && options.rows_per_strip != shape.height
+                          : options.compression == WriteCompression::rice && !is_floating(type);
+  CHECK((file->pages[0].rows_apart > 0) == pieces);
+  if (pieces) check_pieces(*file, stack);
 }
 
 }  // namespace

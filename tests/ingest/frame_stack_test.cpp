@@ -9,8 +9,10 @@
 #include <vector>
 
 #include "base/progress.h"
+#include "formats/frame_writer.h"
 #include "ingest/open_stack.h"
 #include "ingest/read_ahead.h"
+#include "ingest/session_folder.h"
 
 using namespace evenfield;
 
@@ -57,7 +59,7 @@ struct RawSession {
 void check_all(const FrameStack& stack) {
   std::vector<std::uint16_t> rows(kWidth * 3);
   for (int f = 0; f < stack.frames(); ++f) {
-    const Status read = stack.read_rows(f, 4, 3, rows.data());
+    const Status read = stack.read_rows(f, 4, 3, rows.data(), 0);
     REQUIRE_MESSAGE(read, to_line(read.error()));
     for (int i = 0; i < kWidth * 3; ++i)
       if (rows[static_cast<std::size_t>(i)] != pixel(f, i % kWidth, 4 + i / kWidth))
@@ -83,6 +85,52 @@ TEST_CASE("a series of more files than may be open is read") {
   REQUIRE(::setrlimit(RLIMIT_NOFILE, &before) == 0);
 }
 
+TEST_CASE("rows of frames compressed in pieces are those of the frames, wherever they begin and end") {
+  const SessionFolder folder;
+  constexpr int kSide = 45;
+  constexpr int kFrames = 3;
+  const FrameShape shape{kSide, kSide, PixelType::u16};
+  for (const WriteOptions& options :
+       {WriteOptions{.compression = WriteCompression::deflate, .rows_per_strip = 7},
+        WriteOptions{.compression = WriteCompression::lzw, .tile_size = 16},
+        WriteOptions{
+            .format = WriteFormat::fits, .compression = WriteCompression::rice, .extensions = true}}) {
+    const auto path = folder.path() / "frames";
+    auto writer = create_frames(path, shape, kFrames, options);
+    REQUIRE(writer);
+    for (int f = 0; f < kFrames; ++f) {
+      std::vector<std::uint16_t> frame;
+      for (int i = 0; i < kSide * kSide; ++i) frame.push_back(pixel(f, i % kSide, i / kSide));
+      REQUIRE((*writer)->add(frame.data()));
+    }
+    REQUIRE((*writer)->finish());
+    auto file = inspect(path);
+    REQUIRE(file);
+    Session session;
+    session.shape = shape;
+    session.files = {{path, "frames"}};
+    Series series;
+    for (int f = 0; f < kFrames; ++f) series.frames.push_back({0, f + 1});
+    const std::vector<FrameFile> files{*file};
+    Progress progress;
+    {
+      const auto stack = open_stack(session, series, files, 2, {&progress, nullptr, nullptr});
+      REQUIRE_MESSAGE(stack, to_line(stack.error()));
+      REQUIRE(stack->rows_apart() == file->pages[0].rows_apart);
+      std::vector<std::uint16_t> rows(kSide * kSide);
+      for (const int worker : {0, 1})
+        for (const auto& [y, count] : {std::pair{0, kSide}, {14, 7}, {3, 9}, {44, 1}, {16, 29}})
+          for (int f = 0; f < kFrames; ++f) {
+            const Status read = stack->read_rows(f, y, count, rows.data(), worker);
+            REQUIRE_MESSAGE(read, to_line(read.error()));
+            for (int i = 0; i < kSide * count; ++i)
+              REQUIRE(rows[static_cast<std::size_t>(i)] == pixel(f, i % kSide, y + i / kSide));
+          }
+    }
+    CHECK(progress.work_done == reading_work(session, series, files));
+  }
+}
+
 TEST_CASE("a stack counts its whole work, however little of it was read") {
   const RawSession raw(3);
   Progress progress;
@@ -93,7 +141,7 @@ TEST_CASE("a stack counts its whole work, however little of it was read") {
     REQUIRE(stack);
     CHECK(progress.work_done == 0);
     std::vector<std::uint16_t> rows(kWidth * 2);
-    REQUIRE(stack->read_rows(1, 0, 2, rows.data()));
+    REQUIRE(stack->read_rows(1, 0, 2, rows.data(), 0));
     CHECK(progress.work_done == 2U * kWidth * 2U);
   }
   CHECK(progress.work_done == work);
@@ -117,7 +165,7 @@ TEST_CASE("a file that became shorter is an error that names the file and the ro
   const auto stack = open_stack(raw.session, raw.series, raw.files, 1);
   REQUIRE(stack);
   std::vector<std::uint16_t> rows(kWidth * kHeight);
-  const Status read = stack->read_rows(1, 0, kHeight, rows.data());
+  const Status read = stack->read_rows(1, 0, kHeight, rows.data(), 0);
   REQUIRE(!read);
   CHECK(to_line(read.error()).find("1.raw") != std::string::npos);
   CHECK(read.error().what.find("rows 0 to 9") != std::string::npos);
