@@ -116,6 +116,56 @@ struct FrameMean {
       0;  ///< from temporal noise alone; unit of `relative` for flats, DN for darks
 };
 
+/// Lines of a frame, one value a column (or a row) of the region [DN].
+struct Profiles {
+  std::vector<double> middle;  ///< the middle row (or column)
+  std::vector<double> mean, lowest, highest;
+};
+
+/// Power spectrum of the lines of a frame, mean over the lines, temporal noise taken out (EMVA 1288, from
+/// memory): amplitude sqrt(p) [DN] at v / length cycles a pixel, v = 0 .. length / 2.
+struct Spectrogram {
+  int length = 0;  ///< pixels of a line
+  int lines = 0;
+  std::vector<double> amplitude_dn;
+  double white_dn = 0;       ///< sqrt of the median of p: what has no structure
+  double non_whiteness = 0;  ///< spatial variance over the white part's
+  double temporal_dn = 0;    ///< sqrt of what temporal noise left and was taken out
+};
+
+/// How often values of the mean frame occur: bins of equal width from `first` (the centre of the first) on.
+struct Histogram {
+  double first = 0;
+  double width = 0;
+  std::vector<std::int64_t> counts;
+};
+
+/// What only the mean frame of a series shows: of the darks that DSNU is taken from, or of the flat near half
+/// range.
+struct MeanFrame {
+  int series = 0;  ///< index into Characterization::series
+  int frames = 0;
+  double mean_dn = 0;
+  Profiles along_row, along_column;  ///< one value a column, one value a row
+  Spectrogram of_rows, of_columns;
+  Histogram values;      ///< DN
+  double normal_dn = 0;  ///< standard deviation of the white part, for a normal curve
+  Histogram deviations;  ///< |value - mean| [DN], each count: that much or more
+};
+
+/// Signal-to-noise ratio of a pixel at one level, and what describes it at any.
+struct SnrPoint {
+  double signal_e = 0;
+  double ratio = 0;  ///< signal over temporal noise
+  double ratio_uncertainty = 0;
+};
+struct SnrCurve {
+  std::vector<SnrPoint> points;
+  double dark_noise_e = 0;             ///< quantization included
+  std::optional<double> dsnu_e, prnu;  ///< PRNU as a fraction
+  std::optional<double> saturation_e;
+};
+
 /// The curves behind the numbers, for pictures; not part of result.json.
 struct RegionCurves {
   std::string region;
@@ -126,6 +176,11 @@ struct RegionCurves {
   bool saturates = false;
   std::vector<CurvePoint> dark_mean;  ///< x exposure [s], y mean of the dark [DN]
   std::vector<FrameMean> frame_means;
+  /// What the curved model says at the points of photon_transfer, in their order; empty where it was not
+  /// fitted.
+  std::vector<double> photon_transfer_curved;
+  std::optional<SnrCurve> snr;
+  std::optional<MeanFrame> dark_frame, flat_frame;
 };
 
 struct Characterization {
