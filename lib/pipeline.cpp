@@ -1,18 +1,24 @@
 #include "pipeline.h"
 
+#include <algorithm>
 #include <atomic>
 #include <chrono>
+#include <cmath>
 #include <ctime>
 #include <future>
 #include <numeric>
 
 #include "accumulate/accumulate.h"
+#include "accumulate/mean_frame.h"
 #include "analyse/analyse.h"
 #include "analyse/dark_match.h"
+#include "analyse/mean_frame_statistics.h"
+#include "analyse/second_look.h"
 #include "base/interrupt.h"
 #include "ingest/open_stack.h"
 #include "ingest/read_ahead.h"
 #include "ingest/session_reader.h"
+#include "model/radiometry.h"
 
 namespace evenfield {
 namespace {
@@ -32,12 +38,26 @@ AnalysisInput begin_input(const Session& session) {
   AnalysisInput input;
   input.bit_depth = session.camera.bit_depth;
   input.floating = is_floating(session.shape.type);
-  if (session.light)
+  if (session.analysis.gain_model == "line") input.gain_model = GainModel::line;
+  if (session.analysis.gain_model == "curved") input.gain_model = GainModel::curved;
+  if (session.light) {
     input.level_relative_uncertainty = session.light->level_relative_standard_uncertainty.value_or(0.0);
+    input.irradiance_relative_uncertainty =
+        session.light->irradiance_relative_standard_uncertainty.value_or(0.0);
+  }
   for (const SessionRegion& region : session.regions) input.regions.push_back({region.name, region.rect});
   for (const Series& series : session.series) {
     SeriesInput& out = input.series.emplace_back();
     out.conditions = series.conditions;
+    const Light& light = series.light;
+    if (session.camera.pixel_pitch_um && light.wavelength_nm && light.irradiance_w_per_m2) {
+      input.has_light = true;
+      out.wavelength_nm = light.wavelength_nm;
+      if (series.conditions.exposure_s)
+        out.photons = photons_per_pixel(*session.camera.pixel_pitch_um, *light.wavelength_nm,
+                                        *light.irradiance_w_per_m2 * series.conditions.light,
+                                        *series.conditions.exposure_s);
+    }
     for (const FrameReference& frame : series.frames) {
       const std::string& shown = session.files[static_cast<std::size_t>(frame.file)].shown;
       if (out.files.empty() || out.files.back() != shown) out.files.push_back(shown);
@@ -137,6 +157,60 @@ Status read_all(const OpenedSession& opened,
   return Done{};
 }
 
+/// Where the first look set hits aside: its threshold times the noise of the noisiest block, and two codes.
+double hit_limit_dn(const RegionSummary& region) {
+  if (region.hits == 0) return 0;
+  double variance = 0;
+  for (std::size_t b = 0; b < region.block_squares.size(); ++b)
+    if (region.block_dof[b] > 0) variance = std::max(variance, region.block_squares[b] / region.block_dof[b]);
+  return AccumulateOptions{}.hit_threshold * std::sqrt(variance * region.frames / (region.frames - 1)) + 2;
+}
+
+/// The second look: mean frames of a few series, of which a float a pixel is kept at a time.
+Status look_again(const OpenedSession& opened, const MeasureOptions& options, AnalysisInput& input) {
+  std::vector<Rect> rects;
+  for (const Region& region : input.regions) rects.push_back(region.rect);
+  input.mean_frames.resize(input.series.size());
+  for (const SecondLook& look : plan_second_look(input)) {
+    const Series& series = opened.session.series[look.series];
+    const auto stack = open_stack(opened.session, series, opened.frame_files, options.threads);
+    if (!stack) return stack.error();
+    MeanFrameOptions how;
+    how.threads = options.threads;
+    if (look.noise)
+      for (const RegionSummary& region : input.series[look.series].regions)
+        how.frame_means.push_back(region.frame_means);
+    for (const RegionSummary& region : input.series[look.series].regions)
+      how.hit_limits.push_back(hit_limit_dn(region));
+    auto images = mean_frame(*stack, rects, how);
+    if (!images) return images.error();
+    for (std::size_t r = 0; r < rects.size(); ++r) {
+      const RegionSummary& summary = input.series[look.series].regions[r];
+      PixelMeans& image = (*images)[r];
+      MeanFrameFacts facts;
+      if (image.variance) facts.median_noise_dn = median_deviation(image.variances());
+      image.variance.reset();  // before the next image of a float a pixel is made
+      MeanFrameInput in;
+      in.pixels = image.means();
+      in.width = rects[r].width;
+      in.height = rects[r].height;
+      in.level_dn = image.level_dn;
+      in.frames = image.frames;
+      in.noise_left_dn2 = summary.variance.value_or(0.0) / image.frames;
+      in.continuous = input.floating;
+      MeanFrameStatisticsOptions what;
+      what.pictures = options.pictures && look.pictures;
+      what.threads = options.threads;
+      MeanFrameStatistics statistics = mean_frame_statistics(in, what);
+      facts.high_pass = std::move(statistics.high_pass);
+      facts.pictures = std::move(statistics.pictures);
+      if (facts.pictures) facts.pictures->series = static_cast<int>(look.series * rects.size() + r);
+      input.mean_frames[look.series].push_back(std::move(facts));
+    }
+  }
+  return Done{};
+}
+
 }  // namespace
 
 const char* program_version() { return EVENFIELD_VERSION; }
@@ -148,10 +222,6 @@ Result<Characterization> measure(const std::filesystem::path& session_file, cons
   const auto opened = read_session(session_file, options.threads, options.camera_file);
   if (!opened) return opened.error();
   const Session& session = opened->session;
-  if (session.analysis.gain_model == "curved")
-    return Error{Errc::input,
-                 {session_file, {}, {}, "analysis.gain_model"},
-                 "found \"curved\", expected auto or line: this version fits no curved model"};
   AnalysisInput input = begin_input(session);
   std::vector<Rect> rects;
   for (const Region& region : input.regions) rects.push_back(region.rect);
@@ -162,6 +232,8 @@ Result<Characterization> measure(const std::filesystem::path& session_file, cons
   progress.work = 0;
   progress.series = 0;
   progress.stage = "analysing";
+  if (const Status looked = look_again(*opened, options, input); !looked) return looked.error();
+  if (interrupt_requested()) return interrupted();
   Characterization out = analyse(input);
   for (const SessionRegion& region : session.regions)
     for (Quantity& q : out.quantities)

@@ -17,6 +17,7 @@ struct MeasureOptions {
   int threads = 1;
   std::optional<std::filesystem::path> camera_file;  ///< its [camera] and [light] go over the session's
   Progress* progress = nullptr;                      ///< kept up to date, if given
+  bool pictures = true;                              ///< what only pictures need is computed too
 };
 
 /// Measures the session that `session_file` describes. Memory does not grow with the number of series.

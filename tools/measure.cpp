@@ -77,6 +77,7 @@ int measure_command(int argc, char** argv) {
   if (!folder) return report_error(folder.error());
   ProgressLine line(parsed.common.progress);
   MeasureOptions measure_options;
+  measure_options.pictures = plots->all || !plots->names.empty();
   measure_options.threads = parsed.common.threads;
   if (parsed.values.contains("camera"))
     measure_options.camera_file = parsed.values["camera"].as<std::string>();

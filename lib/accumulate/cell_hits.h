@@ -127,6 +127,23 @@ PixelSeries pixel_series(const CellInput& cell, const Workspace<C>& work, const 
   return out;
 }
 
+/// How many samples of the cell show its highest code.
+template <class C>
+int samples_at_highest(const CellInput& cell, const Workspace<C>& work) {
+  const int pixels = cell.width * cell.height;
+  C highest = work.centred[0][0];
+  for (int f = 0; f < cell.frames; ++f) {
+    const C* d = work.centred[static_cast<std::size_t>(f)].data();
+    for (int p = 0; p < pixels; ++p) highest = d[p] > highest ? d[p] : highest;
+  }
+  int count = 0;
+  for (int f = 0; f < cell.frames; ++f) {
+    const C* d = work.centred[static_cast<std::size_t>(f)].data();
+    for (int p = 0; p < pixels; ++p) count += d[p] == highest ? 1 : 0;
+  }
+  return count;
+}
+
 /// Sums of a frame after one of its pixels has changed: exact for whole numbers.
 inline void put_right(
     const CellInput& cell, int frame, int pixel, double before, double after, CellStatistics& out) {
@@ -150,6 +167,8 @@ int replace_hits(const CellInput& cell, bool whole_codes, Workspace<C>& work, Ce
   // A frame at the distance d from the mean of the others adds d^2 (frames - 1) / frames to the squares of
   // its pixel.
   const double least_squares = 0.999 * limit * limit / (frames * (frames - 1));
+  // Noise that is cut off at the top code looks like hits of pixels that seldom reach it.
+  if (samples_at_highest(cell, work) > most_hits(pixels) * cell.frames / 4) return 0;
   int found = 0;
   int hit_pixel[kCellPixels / 32 + 4];
   int hit_frame[kCellPixels / 32 + 4];

@@ -4,12 +4,15 @@
 #include <cmath>
 
 #include "analyse/dark_current.h"
+#include "analyse/data_sheet_findings.h"
+#include "analyse/data_sheet_quantities.h"
 #include "analyse/findings.h"
 #include "analyse/gain.h"
 #include "analyse/levels.h"
 #include "analyse/nonuniformity.h"
 #include "analyse/region_quantities.h"
 #include "analyse/response.h"
+#include "result/quantity_table.h"
 
 namespace evenfield {
 namespace {
@@ -59,9 +62,10 @@ RegionCurves region_curves(const RegionLevels& levels,
       point.x = level.signal;
       point.y = *level.variance - *level.dark_variance;
       point.y_uncertainty = *level.variance * std::sqrt(2 / flat.dof);
-      if (gain.gain)
-        point.fitted = gain.gain->value * level.signal +
+      if (gain.line_gain)
+        point.fitted = gain.line_gain->value * level.signal +
                        (gain.line_intercept_dn2 > 0 ? gain.line_intercept_dn2 - reference : 0.0);
+      if (gain.curve) out.photon_transfer_curved.push_back(gain.curve->at(level.signal) - reference);
       point.used = std::find(gain.gain_levels.begin(), gain.gain_levels.end(), i) != gain.gain_levels.end();
       out.photon_transfer.push_back(point);
     }
@@ -108,6 +112,43 @@ RegionCurves region_curves(const RegionLevels& levels,
   return out;
 }
 
+/// Measured signal-to-noise ratios, and what describes the ratio at any signal.
+std::optional<SnrCurve> snr_curve(const RegionLevels& levels,
+                                  const GainAndNoise& gain,
+                                  const Nonuniformity& pattern,
+                                  const Sensitivity& sensitivity) {
+  if (!gain.gain || !sensitivity.dark_noise_e) return std::nullopt;
+  SnrCurve out;
+  const double k = gain.gain->value;
+  for (const Level& level : levels.levels()) {
+    if (!level.variance || !(*level.variance > 0) || !(level.signal > 0)) continue;
+    const double ratio = level.signal / std::sqrt(*level.variance);
+    out.points.push_back({level.signal / k, ratio, ratio / std::sqrt(2 * levels.summary(level.series).dof)});
+  }
+  if (out.points.empty()) return std::nullopt;
+  out.dark_noise_e = sensitivity.dark_noise_e->value;
+  if (pattern.dark && pattern.dark->square > 0) out.dsnu_e = std::sqrt(pattern.dark->square) / k;
+  if (pattern.light && pattern.light->square > 0)
+    out.prnu = std::sqrt(pattern.light->square) / pattern.light_signal_dn;
+  if (levels.top().saturates && levels.top().unresolved.empty())
+    out.saturation_e = levels.top().signal_dn / k;
+  return out;
+}
+
+/// Region by region, in the order of the table of quantities, whoever made them.
+void in_order_of_table(std::vector<Quantity>& quantities, std::size_t regions) {
+  const std::span<const QuantityInfo> table = quantity_table();
+  const auto place = [&](const Quantity& q) {
+    return std::find_if(table.begin(), table.end(),
+                        [&](const QuantityInfo& info) { return info.name == q.name; }) -
+           table.begin();
+  };
+  const auto each = static_cast<std::ptrdiff_t>(quantities.size() / std::max<std::size_t>(regions, 1));
+  for (auto first = quantities.begin(); first != quantities.end(); first += each)
+    std::stable_sort(first, first + each,
+                     [&](const Quantity& a, const Quantity& b) { return place(a) < place(b); });
+}
+
 void append(Correlations& all, const Correlations& one, const std::string& suffix) {
   const std::size_t before = all.names.size();
   for (const std::string& name : one.names) all.names.push_back(name + suffix);
@@ -146,12 +187,29 @@ Characterization analyse(const AnalysisInput& input) {
     for (const std::size_t i : response.levels)
       table[r][levels.levels()[i].series].used_in.emplace_back("linearity");
 
+    const DataSheet sheet{find_dark_noise_parts(levels),       pattern,
+                          find_pattern_parts(levels, pattern), find_full_well(levels, response),
+                          find_sensitivity(levels, gain),      find_shutter_offset(levels, response),
+                          find_efficiency(levels, gain)};
     for (Quantity& q : region_quantities(levels, gain, response, pattern, dark))
       out.quantities.push_back(std::move(q));
+    for (Quantity& q : data_sheet_quantities(levels, gain, dark, sheet))
+      out.quantities.push_back(std::move(q));
     for (Finding& f : region_findings(levels, gain, response, rows)) out.findings.push_back(std::move(f));
+    for (Finding& f : data_sheet_findings(levels, gain, dark, sheet, rows))
+      out.findings.push_back(std::move(f));
     append(out.correlations, gain.correlations, regions > 1 ? "@" + input.regions[r].name : "");
     out.curves.push_back(region_curves(levels, gain, response, dark, rows));
+    const auto picture_of = [&](const std::optional<SpatialEstimate>& of) -> std::optional<MeanFrame> {
+      if (!of || of->series >= input.mean_frames.size() || input.mean_frames[of->series].empty())
+        return std::nullopt;
+      return input.mean_frames[of->series][r].pictures;
+    };
+    out.curves.back().dark_frame = picture_of(pattern.dark);
+    out.curves.back().flat_frame = picture_of(pattern.light);
+    out.curves.back().snr = snr_curve(levels, gain, pattern, sheet.sensitivity);
   }
+  in_order_of_table(out.quantities, regions);
   for (std::size_t s = 0; s < input.series.size(); ++s)
     for (std::size_t r = 0; r < regions; ++r) out.series.push_back(std::move(table[r][s]));
   return out;

@@ -1,10 +1,40 @@
 #include "analyse/dark_current.h"
 
+#include <algorithm>
 #include <cmath>
 
 #include "model/line_fit.h"
 
 namespace evenfield {
+namespace {
+
+/// Slope of the darks' variances: shot noise of dark current grows with exposure, read noise does not.
+void find_variance_slope(const RegionLevels& levels, DarkCurrent& out) {
+  std::vector<LinePoint> points;
+  std::vector<std::size_t> series;
+  for (const std::size_t s : out.series) {
+    const RegionSummary& dark = levels.summary(s);
+    if (!dark.variance || !(*dark.variance > 0) || !(dark.dof > 0)) continue;
+    points.push_back({*levels.input().series[s].conditions.exposure_s, *dark.variance,
+                      dark.dof / (2 * *dark.variance * *dark.variance)});
+    series.push_back(s);
+  }
+  if (exposure_count(levels.input(), series) < 2) {
+    out.variance_reason = "needs darks of two exposures or more, of two frames or more each";
+    return;
+  }
+  const auto line = fit_line(points);
+  if (!line) {
+    out.variance_reason = "no line fits the dark variances: " + line.error().what;
+    return;
+  }
+  const double spread =
+      line->degrees_of_freedom > 0 ? std::max(1.0, line->chi2 / line->degrees_of_freedom) : 1.0;
+  out.variance_dn2_per_s = Estimate{line->slope, std::sqrt(line->slope_variance * spread), 0.0,
+                                    spread > 1 ? std::optional(line->degrees_of_freedom) : std::nullopt};
+}
+
+}  // namespace
 
 DarkCurrent find_dark_current(const RegionLevels& levels) {
   DarkCurrent out;
@@ -19,7 +49,7 @@ DarkCurrent find_dark_current(const RegionLevels& levels) {
   }
   if (exposure_count(input, out.series) < 2) {
     out.series.clear();
-    out.reason = "needs darks of two exposures or more";
+    out.reason = out.variance_reason = "needs darks of two exposures or more";
     return out;
   }
   std::vector<LinePoint> points;
@@ -31,6 +61,7 @@ DarkCurrent find_dark_current(const RegionLevels& levels) {
     if (input.series[s].conditions.temperature_c)
       out.temperature_c = input.series[s].conditions.temperature_c;
   }
+  find_variance_slope(levels, out);
   const auto line = fit_line(points);
   if (!line) {
     out.series.clear();

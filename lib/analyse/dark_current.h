@@ -1,7 +1,8 @@
 #pragma once
 /// Dark current of one region from the means of darks of several exposures: slope of the straight line,
-/// weighted by frames. Its uncertainty is that of the sensor at hand: temporal noise and the scatter of the
-/// dark level between frames.
+/// weighted by frames; and from their variances, slope of the line weighted by the variances' own
+/// uncertainty. Its uncertainty is that of the sensor at hand: temporal noise and the scatter of the dark
+/// level between frames.
 
 #include <optional>
 #include <string>
@@ -19,6 +20,8 @@ struct DarkCurrent {
   std::string reason;               ///< why there is none
   std::string note;
   std::optional<double> temperature_c;
+  std::optional<Estimate> variance_dn2_per_s;  ///< growth of the temporal variance of darks
+  std::string variance_reason;
 };
 
 DarkCurrent find_dark_current(const RegionLevels& levels);

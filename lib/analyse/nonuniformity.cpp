@@ -38,6 +38,24 @@ std::optional<std::size_t> best_dark(const RegionLevels& levels, const std::vect
   return best;
 }
 
+/// Of the darks that match a flat the one of the nearest exposure, whose pattern lies under the flat's; of
+/// equals the one of most frames.
+std::optional<std::size_t> nearest_dark(const RegionLevels& levels, std::size_t flat) {
+  const Conditions& conditions = levels.input().series[flat].conditions;
+  const auto distance = [&](std::size_t s) {
+    const auto& exposure = levels.input().series[s].conditions.exposure_s;
+    return exposure && conditions.exposure_s ? std::abs(*exposure - *conditions.exposure_s) : 0.0;
+  };
+  std::optional<std::size_t> nearest;
+  for (const std::size_t s : matching_darks(levels.input(), conditions)) {
+    if (!levels.summary(s).spatial_variance) continue;
+    if (!nearest || distance(s) < distance(*nearest) ||
+        (distance(s) == distance(*nearest) && levels.summary(s).frames > levels.summary(*nearest).frames))
+      nearest = s;
+  }
+  return nearest;
+}
+
 }  // namespace
 
 Nonuniformity find_nonuniformity(const RegionLevels& levels) {
@@ -67,8 +85,7 @@ Nonuniformity find_nonuniformity(const RegionLevels& levels) {
     out.light_reason = "needs an unsaturated flat series of two frames or more, and matching darks";
     return out;
   }
-  const auto dark =
-      best_dark(levels, matching_darks(levels.input(), levels.input().series[nearest->series].conditions));
+  const auto dark = nearest_dark(levels, nearest->series);
   if (!dark) {
     out.light_reason = "needs a matching dark series of two frames or more";
     return out;
@@ -77,6 +94,7 @@ Nonuniformity find_nonuniformity(const RegionLevels& levels) {
   const SpatialEstimate off = spatial_estimate(levels, *dark);
   out.light = {flat.square - off.square, std::hypot(flat.square_uncertainty, off.square_uncertainty),
                nearest->series};
+  out.light_dark_series = *dark;
   out.light_signal_dn = nearest->signal;
   double variance = std::pow(levels.mean_uncertainty(nearest->series), 2);
   for (const auto& [series, weight] : nearest->dark.mean)

@@ -22,6 +22,7 @@ struct Nonuniformity {
   std::string dark_reason;
   std::optional<SpatialEstimate>
       light;  ///< of the unsaturated flat nearest half of the range top, its dark's taken off
+  std::size_t light_dark_series = 0;  ///< whose pattern was taken off
   double light_signal_dn = 0;
   double light_signal_uncertainty_dn = 0;
   std::string light_reason;

@@ -3,115 +3,76 @@
 #include <array>
 #include <cmath>
 
+#include "analyse/data_sheet_findings.h"
+#include "analyse/quantity_list.h"
 #include "model/gum.h"
 #include "model/student.h"
 
 namespace evenfield {
 namespace {
 
-using Condition = std::vector<std::pair<std::string, double>>;
-
-Condition condition_of(const Conditions& c) {
-  Condition out;
-  if (c.exposure_s) out.emplace_back("exposure_s", *c.exposure_s);
-  if (c.temperature_c) out.emplace_back("temperature_c", *c.temperature_c);
-  if (c.em_gain) out.emplace_back("em_gain", *c.em_gain);
-  if (c.control_v) out.emplace_back("control_v", *c.control_v);
-  return out;
+std::string joined(const std::string& a, const std::string& b) {
+  return a + (a.empty() || b.empty() ? "" : "; ") + b;
 }
 
-/// The condition of a number that rests on all levels: what they share.
-Condition light_condition(const RegionLevels& levels) {
-  Condition out;
-  if (levels.levels().empty()) return out;
-  Conditions shared = levels.input().series[levels.levels().front().series].conditions;
-  shared.exposure_s.reset();
-  return condition_of(shared);
+void gain_models(QuantityList& b, const GainAndNoise& gain, const std::string& range) {
+  const Condition condition = light_condition(b.levels());
+  const auto put = [&](const char* name, const std::optional<Estimate>& estimate, const std::string& method,
+                       const std::string& note, const std::string& reason) {
+    Quantity& q = estimate ? b.known(name, *estimate, method, note) : b.unknown(name, reason);
+    q.condition = condition;
+  };
+  put("conversion_gain_line_dn_per_e", gain.line_gain,
+      "maximum-likelihood line of temporal variance against signal, " + range +
+          " and the dark; block jackknife",
+      gain.gain_note, gain.gain_reason);
+  put("conversion_gain_curved_dn_per_e", gain.curved_gain,
+      "slope at low signal of V = b + K^2/(2a) (exp(2 a x/K) - 1), maximum likelihood, " + range +
+          " and the dark; block jackknife",
+      gain.gain_note, gain.curve_reason);
+  put("variance_curvature_per_e", gain.curvature,
+      "a of V = b + K^2/(2a) (exp(2 a x/K) - 1), fitted with the curved conversion gain; block jackknife",
+      gain.gain_note, gain.curve_reason);
+  put("conversion_gain_origin_line_dn_per_e", gain.origin_gain,
+      "unweighted line through the origin of variance less dark variance against signal, " + range +
+          ", as EMVA 1288 draws it (from memory); block jackknife",
+      gain.gain_note, "the temporal variance does not rise with the signal");
+  put("conversion_gain_lag_summed_dn_per_e", gain.lag_gain,
+      "line of the variance plus the covariances with the eight neighbours, from the first two frames of " +
+          std::to_string(gain.lag_levels.size()) +
+          " light levels and the dark, the two diagonals taken as alike; block jackknife",
+      gain.gain_note, gain.lag_reason);
 }
 
-/// value x factor, where both are uncertain and independent.
-Estimate product(
-    double value, double uncertainty, std::optional<double> dof, double factor, const Estimate& of_factor) {
-  Estimate out;
-  out.value = value * factor;
-  const std::array parts{Contribution{std::abs(factor) * uncertainty, dof.value_or(1e300)},
-                         Contribution{std::abs(value) * of_factor.statistical_uncertainty,
-                                      of_factor.degrees_of_freedom.value_or(1e300)}};
-  out.statistical_uncertainty = combined_uncertainty(parts);
-  if (out.statistical_uncertainty > 0) out.degrees_of_freedom = effective_degrees_of_freedom(parts);
-  if (out.degrees_of_freedom && !(*out.degrees_of_freedom < 1e6)) out.degrees_of_freedom.reset();
-  return out;
-}
-
-/// 1/K with the relative uncertainty of K.
-Estimate inverse(const Estimate& gain) {
-  const double value = 1 / gain.value;
-  return {value, value * gain.statistical_uncertainty / gain.value,
-          value * gain.common_uncertainty / gain.value, gain.degrees_of_freedom};
-}
-
-class Builder {
- public:
-  explicit Builder(const RegionLevels& levels)
-      : levels_(levels), region_(levels.input().regions[levels.region()].name) {}
-
-  Quantity& known(std::string name, const Estimate& estimate, std::string method, std::string note = {}) {
-    return out_.emplace_back(
-        evenfield::known(std::move(name), region_, estimate, std::move(method), std::move(note)));
-  }
-  Quantity& unknown(std::string name, std::string reason) {
-    return out_.emplace_back(evenfield::unknown(std::move(name), region_, std::move(reason)));
-  }
-  Quantity& root(std::string name,
-                 const SpatialEstimate& s,
-                 double divisor,
-                 double divisor_relative,
-                 std::string method,
-                 std::string note) {
-    return out_.emplace_back(root_of_square(std::move(name), region_, s.square, s.square_uncertainty, divisor,
-                                            divisor_relative, std::move(method), std::move(note)));
-  }
-  std::vector<Quantity> take() { return std::move(out_); }
-  const RegionLevels& levels() const { return levels_; }
-
- private:
-  const RegionLevels& levels_;
-  std::string region_;
-  std::vector<Quantity> out_;
-};
-
-void gains(Builder& b, const GainAndNoise& gain) {
+void gains(QuantityList& b, const GainAndNoise& gain) {
   const Condition condition = light_condition(b.levels());
   if (!gain.gain) {
-    for (const char* name : {"conversion_gain_dn_per_e", "conversion_gain_e_per_dn",
-                             "conversion_gain_line_dn_per_e", "conversion_gain_origin_line_dn_per_e"})
+    for (const char* name :
+         {"conversion_gain_dn_per_e", "conversion_gain_e_per_dn", "conversion_gain_line_dn_per_e",
+          "conversion_gain_curved_dn_per_e", "variance_curvature_per_e",
+          "conversion_gain_origin_line_dn_per_e", "conversion_gain_lag_summed_dn_per_e"})
       b.unknown(name, gain.gain_reason).condition = condition;
     return;
   }
-  const std::string levels = std::to_string(gain.gain_levels.size()) +
-                             (gain.gain_levels.size() == 1 ? " light level" : " light levels");
-  std::string note = gain.gain_levels.size() == 1
-                         ? "two points, one light level and the dark: a curved relation cannot be seen"
-                         : "";
-  if (!gain.gain_note.empty()) note += (note.empty() ? "" : "; ") + gain.gain_note;
-  const std::string method = "maximum-likelihood line of temporal variance against signal, " + levels +
-                             " up to 70 % of the range and the dark; block jackknife";
-  b.known("conversion_gain_dn_per_e", *gain.gain, method, note).condition = condition;
+  const std::string range = std::to_string(gain.gain_levels.size()) +
+                            (gain.gain_levels.size() == 1 ? " light level" : " light levels") +
+                            " up to 70 % of the range";
+  const std::string few = gain.gain_levels.size() == 1
+                              ? "two points, one light level and the dark: a curved relation cannot be seen"
+                              : "";
+  const std::string note = joined(joined(few, gain.gain_model_note), gain.gain_note);
+  b.known("conversion_gain_dn_per_e", *gain.gain,
+          gain.curved ? "slope at low signal of the curved model, " + range + " and the dark; block jackknife"
+                      : "maximum-likelihood line of temporal variance against signal, " + range +
+                            " and the dark; block jackknife",
+          note)
+      .condition = condition;
   b.known("conversion_gain_e_per_dn", inverse(*gain.gain), "inverse of conversion_gain_dn_per_e", note)
       .condition = condition;
-  b.known("conversion_gain_line_dn_per_e", *gain.gain, method, note).condition = condition;
-  if (gain.origin_gain)
-    b.known("conversion_gain_origin_line_dn_per_e", *gain.origin_gain,
-            "unweighted line through the origin of variance less dark variance against signal, " + levels +
-                ", as EMVA 1288 draws it (from memory); block jackknife",
-            note)
-        .condition = condition;
-  else
-    b.unknown("conversion_gain_origin_line_dn_per_e", "the temporal variance does not rise with the signal")
-        .condition = condition;
+  gain_models(b, gain, range);
 }
 
-void dark_offset(Builder& b) {
+void dark_offset(QuantityList& b) {
   const RegionLevels& levels = b.levels();
   std::vector<std::size_t> darks;
   for (std::size_t s = 0; s < levels.input().series.size(); ++s)
@@ -154,7 +115,7 @@ void dark_offset(Builder& b) {
       .condition = condition;
 }
 
-void read_noise(Builder& b, const GainAndNoise& gain) {
+void read_noise(QuantityList& b, const GainAndNoise& gain) {
   Condition condition;
   if (gain.read_exposure_s) condition.emplace_back("exposure_s", *gain.read_exposure_s);
   std::string note = gain.read_noise_note;
@@ -180,7 +141,7 @@ void read_noise(Builder& b, const GainAndNoise& gain) {
   }
 }
 
-void saturation(Builder& b, const GainAndNoise& gain) {
+void saturation(QuantityList& b, const GainAndNoise& gain) {
   const RangeTop& top = b.levels().top();
   const Condition condition = light_condition(b.levels());
   if (b.levels().levels().empty()) {
@@ -228,7 +189,7 @@ void saturation(Builder& b, const GainAndNoise& gain) {
         condition;
 }
 
-void linearity(Builder& b, const Response& response) {
+void linearity(QuantityList& b, const Response& response) {
   const Condition condition = light_condition(b.levels());
   if (!response.error_percent) {
     b.unknown("linearity_error_percent", response.reason).condition = condition;
@@ -243,7 +204,7 @@ void linearity(Builder& b, const Response& response) {
   q.low95 = std::max(0.0, *q.low95 - response.floor_percent);
 }
 
-void pattern(Builder& b, const GainAndNoise& gain, const Nonuniformity& pattern) {
+void pattern(QuantityList& b, const GainAndNoise& gain, const Nonuniformity& pattern) {
   const RegionLevels& levels = b.levels();
   const auto frames = [&](const SpatialEstimate& s) {
     return std::to_string(levels.summary(s.series).frames) + " frames";
@@ -275,12 +236,16 @@ void pattern(Builder& b, const GainAndNoise& gain, const Nonuniformity& pattern)
   }
 }
 
-void dark_current(Builder& b, const GainAndNoise& gain, const DarkCurrent& dark) {
+void dark_current(QuantityList& b, const GainAndNoise& gain, const DarkCurrent& dark) {
   Condition condition;
   if (dark.temperature_c) condition.emplace_back("temperature_c", *dark.temperature_c);
-  if (!dark.dn_per_s) {
-    b.unknown("dark_current_dn_per_s", dark.reason).condition = condition;
-    b.unknown("dark_current_e_per_s", dark.reason).condition = condition;
+  const std::string reason = offset_is_regulated(gain, dark)
+                                 ? "the camera holds its dark level, which hides dark current from the "
+                                   "means; see the one from variances"
+                                 : dark.reason;
+  if (!reason.empty() || !dark.dn_per_s) {
+    b.unknown("dark_current_dn_per_s", reason).condition = condition;
+    b.unknown("dark_current_e_per_s", reason).condition = condition;
     return;
   }
   const std::string method = "straight line through the dark means against exposure, weighted by frames";
@@ -302,7 +267,7 @@ std::vector<Quantity> region_quantities(const RegionLevels& levels,
                                         const Response& response,
                                         const Nonuniformity& nonuniformity,
                                         const DarkCurrent& dark) {
-  Builder builder(levels);
+  QuantityList builder(levels);
   gains(builder, gain);
   dark_offset(builder);
   read_noise(builder, gain);

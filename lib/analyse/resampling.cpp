@@ -16,6 +16,13 @@ UnitSums::UnitSums(const RegionSummary& summary, ResamplingUnit unit)
       each->sum += summary.block_mean[b] * summary.block_pixels[b];
       each->squares += summary.block_squares[b];
       each->dof += summary.block_dof[b];
+      if (b >= summary.block_neighbours.size()) continue;
+      const NeighbourSums& neighbours = summary.block_neighbours[b];
+      each->pair_pixels += static_cast<double>(neighbours.pixels);
+      for (std::size_t k = 0; k < kNeighbours; ++k) {
+        each->pairs[k] += static_cast<double>(neighbours.pairs[k]);
+        each->products[k] += neighbours.products[k];
+      }
     }
   }
 }
@@ -23,7 +30,18 @@ UnitSums::UnitSums(const RegionSummary& summary, ResamplingUnit unit)
 UnitSums::Sums UnitSums::without(int left_out) const {
   if (left_out < 0) return all_;
   const Sums& out = units_[static_cast<std::size_t>(left_out)];
-  return {all_.pixels - out.pixels, all_.sum - out.sum, all_.squares - out.squares, all_.dof - out.dof};
+  Sums rest{all_.pixels - out.pixels,
+            all_.sum - out.sum,
+            all_.squares - out.squares,
+            all_.dof - out.dof,
+            all_.pair_pixels - out.pair_pixels,
+            {},
+            {}};
+  for (std::size_t k = 0; k < kNeighbours; ++k) {
+    rest.pairs[k] = all_.pairs[k] - out.pairs[k];
+    rest.products[k] = all_.products[k] - out.products[k];
+  }
+  return rest;
 }
 
 double UnitSums::mean(int left_out) const {
@@ -37,5 +55,18 @@ double UnitSums::variance(int left_out) const {
 }
 
 double UnitSums::dof(int left_out) const { return without(left_out).dof; }
+
+double UnitSums::neighbour_covariance(int left_out) const {
+  const Sums sums = without(left_out);
+  // A pixel has two neighbours in its row, two in its column, four on diagonals; the difference of two frames
+  // has twice the covariance of one.
+  constexpr std::array<double, kNeighbours> kCount{2, 2, 4};
+  double sum = 0;
+  for (std::size_t k = 0; k < kNeighbours; ++k)
+    if (sums.pairs[k] > 0) sum += kCount[k] * sums.products[k] / sums.pairs[k] / 2;
+  return sum;
+}
+
+double UnitSums::neighbour_pixels(int left_out) const { return without(left_out).pair_pixels; }
 
 }  // namespace evenfield

@@ -1,9 +1,12 @@
 #include "analyse/response.h"
 
 #include <algorithm>
+#include <array>
 #include <cmath>
+#include <set>
 
 #include "base/text.h"
+#include "model/line_fit.h"
 
 namespace evenfield {
 namespace {
@@ -88,11 +91,76 @@ Response find_response(const RegionLevels& levels) {
     common.push_back(points[i].signal * levels.input().level_relative_uncertainty);
     relative += std::pow(std::hypot(statistical.back(), common.back()) / points[i].signal, 2);
   }
+  out.uncertainty_dn = statistical;
+  out.common_dn = common;
   out.error_percent = Estimate{line->error_percent, propagated(points, statistical, line->error_percent),
                                propagated(points, common, line->error_percent), std::nullopt};
   out.floor_percent = linearity_floor_percent(std::sqrt(relative / static_cast<double>(points.size())));
   out.note = std::to_string(points.size()) + " levels; noise of light and camera alone would show " +
              to_text(out.floor_percent, 2) + " %; camera and lamp are not told apart";
+  return out;
+}
+
+namespace {
+
+/// Signals y at light l and exposure t: y = a l t + b l, weighted 1/y^2; b / a.
+std::optional<double> offset_of(const std::vector<std::array<double, 3>>& points) {
+  Matrix regressors(static_cast<int>(points.size()), 2);
+  std::vector<double> y;
+  std::vector<double> weights;
+  for (int i = 0; i < regressors.rows; ++i) {
+    const auto& [light, exposure, signal] = points[static_cast<std::size_t>(i)];
+    regressors(i, 0) = light * exposure;
+    regressors(i, 1) = light;
+    y.push_back(signal);
+    weights.push_back(1 / (signal * signal));
+  }
+  const auto fit = fit_linear_model(regressors, y, weights);
+  if (!fit || !(fit->coefficients[0] > 0)) return std::nullopt;
+  return fit->coefficients[1] / fit->coefficients[0];
+}
+
+}  // namespace
+
+ShutterOffset find_shutter_offset(const RegionLevels& levels, const Response& response) {
+  ShutterOffset out;
+  if (!response.line) {
+    out.reason = response.reason;
+    return out;
+  }
+  std::vector<std::array<double, 3>> points;  // light, exposure, signal
+  std::set<double> exposures;
+  for (const std::size_t i : response.levels) {
+    const Level& level = levels.levels()[i];
+    const Conditions& conditions = levels.input().series[level.series].conditions;
+    points.push_back({conditions.light, *conditions.exposure_s, level.signal});
+    exposures.insert(*conditions.exposure_s);
+  }
+  constexpr std::size_t kFewestExposures = 3;
+  if (exposures.size() < kFewestExposures) {
+    out.reason = "needs three different exposures or more between 5 and 95 % of the range top";
+    return out;
+  }
+  const auto offset = offset_of(points);
+  if (!offset) {
+    out.reason = "no line fits the response";
+    return out;
+  }
+  const auto propagate = [&](const std::vector<double>& uncertainty) {
+    double squares = 0;
+    for (std::size_t i = 0; i < points.size(); ++i) {
+      auto moved = points;
+      moved[i][2] += uncertainty[i];
+      if (const auto value = offset_of(moved)) squares += std::pow(*value - *offset, 2);
+    }
+    return std::sqrt(squares);
+  };
+  out.seconds =
+      Estimate{*offset, propagate(response.uncertainty_dn), propagate(response.common_dn), std::nullopt};
+  if (!(out.seconds->statistical_uncertainty > 0)) {
+    out.seconds.reset();
+    out.reason = "the frames show no noise, so nothing is known of the uncertainty";
+  }
   return out;
 }
 

@@ -17,10 +17,11 @@ inline constexpr double kLinearityHigh = 0.95;
 
 struct Response {
   std::optional<Linearity> line;
-  std::vector<std::size_t> levels;        ///< indices into RegionLevels::levels() of the line's points
-  std::optional<Estimate> error_percent;  ///< LE
-  double floor_percent = 0;               ///< what noise alone would show of it
-  std::string reason;                     ///< why there is none
+  std::vector<std::size_t> levels;  ///< indices into RegionLevels::levels() of the line's points
+  std::vector<double> uncertainty_dn, common_dn;  ///< of the points' signals: statistical and common part
+  std::optional<Estimate> error_percent;          ///< LE
+  double floor_percent = 0;                       ///< what noise alone would show of it
+  std::string reason;                             ///< why there is none
   std::string note;
 };
 
@@ -28,5 +29,13 @@ struct Response {
 std::optional<double> axis_of(const RegionLevels& levels, const Level& level);
 
 Response find_response(const RegionLevels& levels);
+
+/// Constant error of the exposure time: the light-collecting time is exposure_s + the offset. From the line
+/// signal = a light (exposure + offset) through the levels of the linearity error, weighted alike.
+struct ShutterOffset {
+  std::optional<Estimate> seconds;
+  std::string reason;  ///< why there is none
+};
+ShutterOffset find_shutter_offset(const RegionLevels& levels, const Response& response);
 
 }  // namespace evenfield

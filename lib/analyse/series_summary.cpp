@@ -60,7 +60,14 @@ void find_row_noise(const RegionStatistics& region, double dark_level, RegionSum
     return s.scaled ? (mean - dark_level) / s.scales[f] : mean - s.frame_means[f];
   };
   double squares = 0;
+  double pair_squares = 0;
   std::vector<double> means;
+  std::vector<double> change(rows);
+  for (std::size_t f = 0; f + 1 < frames; ++f) {
+    for (std::size_t row = 0; row < rows; ++row) change[row] = value(f, row) - value(f + 1, row);
+    if (rows > 1) pair_squares += scatter(change) / 2;
+  }
+  if (rows > 1) s.row_pair_variance = pair_squares / static_cast<double>(frames - 1);
   for (std::size_t row = 0; row < rows; ++row) {
     double mean = 0;
     for (std::size_t f = 0; f < frames; ++f) mean += value(f, row);
@@ -69,9 +76,30 @@ void find_row_noise(const RegionStatistics& region, double dark_level, RegionSum
     means.push_back(mean);
   }
   const double dof = static_cast<double>((rows - 1) * (frames - 1));
-  s.rows = region.rect.height;
   s.row_noise_variance = dof > 0 ? squares / dof - *s.variance / width : 0.0;
   if (rows > 1) s.row_pattern_variance = scatter(means);
+}
+
+double population_variance(const std::vector<double>& values) {
+  return values.size() > 1
+             ? scatter(values) * static_cast<double>(values.size() - 1) / static_cast<double>(values.size())
+             : 0.0;
+}
+
+/// Row and column means of the mean frame.
+void find_line_means(const RegionStatistics& region, RegionSummary& s) {
+  const auto rows = static_cast<std::size_t>(region.rect.height);
+  std::vector<double> row_means(rows, 0.0);
+  for (std::size_t f = 0; f < static_cast<std::size_t>(s.frames); ++f)
+    for (std::size_t row = 0; row < rows; ++row)
+      row_means[row] += region.row_sums[f * rows + row] / (static_cast<double>(region.rect.width) * s.frames);
+  std::vector<double> column_means;
+  for (const double sum : region.column_sums)
+    column_means.push_back(sum / (static_cast<double>(region.rect.height) * s.frames));
+  s.rows = region.rect.height;
+  s.columns = region.rect.width;
+  s.row_means_variance = population_variance(row_means);
+  s.column_means_variance = population_variance(column_means);
 }
 
 }  // namespace
@@ -82,6 +110,8 @@ RegionSummary summarize(const RegionStatistics& region, std::optional<double> da
   s.block_columns = region.columns;
   s.block_rows = region.rows;
   s.block_highest = region.highest;
+  s.block_neighbours = region.neighbours;
+  find_line_means(region, s);
   const std::size_t blocks = region.blocks();
   const auto frames = static_cast<std::size_t>(s.frames);
 
@@ -121,6 +151,7 @@ RegionSummary summarize(const RegionStatistics& region, std::optional<double> da
     for (std::size_t f = 0; f < frames; ++f) s.scales[f] = (s.frame_means[f] - *dark_level) / signal;
   s.scaled = s.scaled && *std::min_element(s.scales.begin(), s.scales.end()) > 0.1;
   if (!s.scaled) s.scales.assign(frames, 1.0);
+  if (s.scaled) s.first_change = s.scales[1] - s.scales[0];
 
   double squares = 0;
   double spatial = 0;
@@ -138,6 +169,8 @@ RegionSummary summarize(const RegionStatistics& region, std::optional<double> da
       }
       block -= sums.total_square / s.frames;
     }
+    // Frames that hold one code have no noise; sums of large numbers would leave some.
+    if (region.lowest[b].code == region.highest[b].code) block = 0;
     s.block_squares.push_back(std::max(0.0, block));
     // Scales or offsets were taken from the region's own means, which costs F - 1 of all degrees of freedom.
     s.block_dof.push_back(s.block_pixels[b] * (s.frames - 1) * (1 - 1 / s.pixels) -

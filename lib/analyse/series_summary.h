@@ -44,6 +44,16 @@ struct RegionSummary {
       row_noise_variance;           ///< temporal variance that a row shares, pixels' own noise less [DN^2]
   double row_pattern_variance = 0;  ///< of the rows' means over all frames, noise included [DN^2]
   int rows = 0;
+  int columns = 0;
+  /// Population variances of the row means and of the column means of the mean frame, noise included [DN^2].
+  double row_means_variance = 0, column_means_variance = 0;
+  /// Half the variance of the rows' means of the difference of two consecutive frames, mean over such pairs
+  /// [DN^2]; from 2 frames on. For noise of rows and pixels: row^2 + pixel^2 / columns.
+  std::optional<double> row_pair_variance;
+  /// Neighbours in the difference of the first two frames; [block], no pixels for a single frame.
+  std::vector<NeighbourSums> block_neighbours;
+  /// Relative change of the signal from the first frame to the second (flats that are scaled).
+  double first_change = 0;
   Extreme lowest, highest;
   std::int64_t hits = 0;
 };
@@ -59,6 +69,8 @@ struct SeriesInput {
   std::vector<RegionSummary> regions;
   std::vector<std::string> fingerprints;
   std::vector<double> code_sample;  ///< ascending
+  std::optional<double> photons;    ///< a pixel and frame, mean
+  std::optional<double> wavelength_nm;
 };
 
 }  // namespace evenfield

@@ -46,16 +46,19 @@ double deviance(std::span<const VariancePoint> points, const Parameters& p) {
   return sum;
 }
 
+std::array<double, 3> derivatives_at(double x, const Parameters& p) {
+  const double u = 2 * p[2] * x / p[1];
+  return {1, x * (2 * mean_exponential(u) - std::exp(u)), 2 * x * x * weighted_exponential(u)};
+}
+
 /// The change of the parameters that weighted least squares asks for, linearized at p.
 Result<LinearModel> scoring_step(std::span<const VariancePoint> points, const Parameters& p) {
   Matrix derivatives(static_cast<int>(points.size()), 3);
   std::vector<double> residuals, weights;
   for (int row = 0; row < derivatives.rows; ++row) {
     const VariancePoint& point = points[static_cast<std::size_t>(row)];
-    const double u = 2 * p[2] * point.x / p[1];
-    derivatives(row, 0) = 1;
-    derivatives(row, 1) = point.x * (2 * mean_exponential(u) - std::exp(u));
-    derivatives(row, 2) = 2 * point.x * point.x * weighted_exponential(u);
+    const std::array<double, 3> slopes = derivatives_at(point.x, p);
+    for (std::size_t k = 0; k < 3; ++k) derivatives(row, static_cast<int>(k)) = slopes[k];
     const double model = value_at(point, p);
     residuals.push_back(point.variance - model);
     weights.push_back(point.degrees_of_freedom / (2 * model * model));
@@ -120,6 +123,24 @@ Result<VarianceCurve> fit_variance_curve(std::span<const VariancePoint> points) 
   }
   curve.degrees_of_freedom = static_cast<double>(points.size()) - 3;
   return curve;
+}
+
+VarianceCurve step_towards(const VarianceCurve& curve, std::span<const VariancePoint> points) {
+  const Parameters now{curve.intercept, curve.slope, curve.curvature};
+  Parameters gradient{0, 0, 0};
+  for (const VariancePoint& point : points) {
+    const double model = value_at(point, now);
+    const double pull = point.degrees_of_freedom / (2 * model * model) * (point.variance - model);
+    const std::array<double, 3> slopes = derivatives_at(point.x, now);
+    for (std::size_t k = 0; k < 3; ++k) gradient[k] += slopes[k] * pull;
+  }
+  VarianceCurve out = curve;
+  const std::array<double*, 3> parameters{&out.intercept, &out.slope, &out.curvature};
+  for (int i = 0; i < 3; ++i)
+    for (int k = 0; k < 3; ++k)
+      *parameters[static_cast<std::size_t>(i)] +=
+          curve.covariance(i, k) * gradient[static_cast<std::size_t>(k)];
+  return out;
 }
 
 }  // namespace evenfield

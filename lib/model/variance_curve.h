@@ -33,4 +33,8 @@ struct VarianceCurve {
 /// Needs 3 points of different x. Errors as fit_variance_line().
 Result<VarianceCurve> fit_variance_curve(std::span<const VariancePoint> points);
 
+/// `curve` after one step of the fit towards `points`, which differ little from those it was fitted to (a
+/// jackknife's): off by the square of what the points moved. Its covariance stays.
+VarianceCurve step_towards(const VarianceCurve& curve, std::span<const VariancePoint> points);
+
 }  // namespace evenfield

@@ -27,7 +27,7 @@ struct FramePanel {
         limits += "set arrow from " + std::to_string(frames - 1) + ".5, graph 0 to " +
                   std::to_string(frames - 1) + ".5, graph 1 nohead lw 0.6 lc rgb '#bbbbbb'\n";
       labels += "set label " + gnuplot_text(std::to_string(series)) + " at " + std::to_string(frames) +
-                ", graph 0.96 left offset -0.4,0 font 'Helvetica,10' tc rgb '#666666'\n";
+                ", graph 0.96 left offset 0,0 font 'Helvetica,10' tc rgb '#666666'\n";
     }
     const double bar = std::isfinite(uncertainty) ? std::abs(uncertainty) : 0;
     (groups % 2 == 1 ? even : odd).add({at, value, bar});

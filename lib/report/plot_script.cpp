@@ -88,16 +88,49 @@ std::string begin_panel(const PanelPlace& place, std::string_view x_title, std::
          to_text(place.left) + "\nset rmargin at screen " + to_text(place.right) +
          "\nset bmargin at screen " + to_text(place.bottom) + "\nset tmargin at screen " +
          to_text(place.top) + "\nset xlabel " + gnuplot_text(x_title) + "\nset ylabel " +
-         gnuplot_text(y_title) + "\n";
+         gnuplot_text(y_title) + " offset 0,0\n";
 }
 
-std::string upright_mark(double x, std::string_view word, double height) {
+std::string few_tics(std::string_view axis, double span, double least) {
+  if (!(span > 0)) return "";
+  constexpr double kMost = 5;
+  const double decade = std::pow(10, std::floor(std::log10(span / kMost)));
+  double step = 10 * decade;
+  for (const double factor : {5.0, 2.0, 1.0})
+    if (factor * decade >= span / kMost) step = factor * decade;
+  return "set " + std::string(axis) + "tics " + to_text(std::max(step, least)) + "\n";
+}
+
+std::string logarithmic_tics(std::string_view axis, const AxisRange& range) {
+  const double ratio = range.high() / range.low();
+  if (!(range.low() > 0) || ratio > 100) return "";
+  // The margins of the axis make it show a factor of 1.44 at least; neighbours in the fine list are nearer.
+  const std::vector<double> steps =
+      ratio > 5 ? std::vector<double>{1, 2, 5} : std::vector<double>{1, 1.2, 1.5, 2, 2.5, 3, 4, 5, 6, 8};
+  std::string places;
+  const int first = static_cast<int>(std::floor(std::log10(range.low()))) - 1;
+  for (int power = first; power <= first + 4; ++power)
+    for (const double step : steps)
+      places += (places.empty() ? "" : ",") + to_text(step * std::pow(10, power), 2);
+  return "set " + std::string(axis) + "tics (" + places + ")\n";
+}
+
+std::string panel_heading(std::string_view text) {
+  return "set label " + gnuplot_text(text) + " at graph 0, graph 1 left offset 0,0.8 font 'Helvetica,13'\n";
+}
+
+std::string key_at_foot() {
+  return "set key at screen 0.53, screen 0.035 center center vertical maxrows 1 Left reverse samplen 3\n";
+}
+
+std::string upright_mark(double x, std::string_view word, double height, std::string_view side) {
   const std::string at = to_text(drawable(x)), grey(kGrey);
   std::string out =
       "set arrow from " + at + ", graph 0 to " + at + ", graph 1 nohead dt 2 lw 1.2 lc rgb '" + grey + "'\n";
   if (!word.empty())
     out += "set label " + gnuplot_text(word) + " at " + at + ", graph " + to_text(height) +
-           " right offset -0.6,0 font 'Helvetica,12' tc rgb '" + grey + "'\n";
+           (side == "left" ? " right offset -0.6,0" : " left offset 0.6,0") +
+           " font 'Helvetica,12' tc rgb '" + grey + "'\n";
   return out;
 }
 

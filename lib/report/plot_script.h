@@ -14,6 +14,7 @@ constexpr std::string_view kBlue = "#0072B2";
 constexpr std::string_view kVermilion = "#D55E00";
 constexpr std::string_view kGreen = "#009E73";
 constexpr std::string_view kGrey = "#666666";
+constexpr std::string_view kPaleBlue = "#BCD9EC";  ///< an area behind lines
 
 /// `text` as a gnuplot string: control characters escaped, shortened to 100 bytes, in single quotes, quotes
 /// doubled.
@@ -32,6 +33,7 @@ class AxisRange {
   bool any() const { return any_; }
   double low() const { return low_; }
   double high() const { return high_; }
+  double span() const { return high_ - low_; }
   /// "[low:high]" with a margin; never empty.
   std::string linear() const;
   /// The same for a logarithmic axis; every value added must be above 0.
@@ -70,8 +72,23 @@ std::string end_picture();
 /// Clears what the panel before left and sets place and axis titles.
 std::string begin_panel(const PanelPlace& place, std::string_view x_title, std::string_view y_title);
 
-/// A dashed upright line at x with a word, if any, beside it at `height` (share of the panel).
-std::string upright_mark(double x, std::string_view word, double height);
+/// Few and round tics on a linear axis ("x" or "y") that shows `span`, five at most, for panels too narrow
+/// for gnuplot's own choice. `least`: smallest step.
+std::string few_tics(std::string_view axis, double span, double least = 0);
+
+/// Tics of a logarithmic axis that shows `range`: where it holds less than two decades gnuplot's own may have
+/// no number at all.
+std::string logarithmic_tics(std::string_view axis, const AxisRange& range);
+
+/// A line of text above the left end of the panel.
+std::string panel_heading(std::string_view text);
+
+/// The key of this panel as one row of words at the foot of the picture.
+std::string key_at_foot();
+
+/// A dashed upright line at x with a word, if any, at `height` (share of the panel) to the left or right of
+/// it.
+std::string upright_mark(double x, std::string_view word, double height, std::string_view side = "left");
 
 /// Plain upright bars from `columns` "x:low:(0):height". gnuplot's own error bars blank a ring about each
 /// marker, which erases the neighbours where points are close.

@@ -8,6 +8,12 @@ find_package(Threads REQUIRED)
 find_package(Eigen3 3.3 REQUIRED NO_MODULE)
 find_package(Boost 1.74 REQUIRED)
 find_package(nlohmann_json 3.11 REQUIRED)
+# Debian's small OpenCV packages come without CMake or pkg-config files of their own.
+find_path(EVENFIELD_OPENCV_HEADERS opencv2/core.hpp PATH_SUFFIXES opencv4 REQUIRED)
+find_library(EVENFIELD_OPENCV_CORE opencv_core REQUIRED)
+add_library(evenfield_opencv_core INTERFACE IMPORTED GLOBAL)
+target_link_libraries(evenfield_opencv_core INTERFACE ${EVENFIELD_OPENCV_CORE})
+target_include_directories(evenfield_opencv_core SYSTEM INTERFACE ${EVENFIELD_OPENCV_HEADERS})
 
 # A compiler cache shortens rebuilds; it is used where it is present and nobody chose a launcher.
 if(EVENFIELD_DEVELOPER AND NOT DEFINED CMAKE_CXX_COMPILER_LAUNCHER)

@@ -1,6 +1,8 @@
 #include "model/linearity.h"
 
+#include <algorithm>
 #include <array>
+#include <cmath>
 #include <vector>
 
 #include "check_row.h"
@@ -28,6 +30,12 @@ TEST_CASE("the linearity error of a slightly curved response") {
                kSource},
   };
   check_rows(rows);
+  double over_signal = 0;  // the same residuals over the signal in place of the line
+  for (const ResponsePoint& point : kResponse)
+    over_signal += 10 * std::abs(point.signal - linearity->at(point.exposure)) / point.signal;
+  const std::array others{
+      CheckRow{"LE-01", "over the signal [%]", over_signal, 0.3085269447, 1e-9, Mark::derived, kSource}};
+  check_rows(others);
   constexpr double kDeviations[] = {-0.352825, 0.337008,  0.434982,  0.382996,  0.270703,
                                     0.128165,  -0.031687, -0.202377, -0.380299, -0.563287};
   REQUIRE(linearity->deviations_percent.size() == std::size(kDeviations));
@@ -42,7 +50,18 @@ TEST_CASE("the unweighted line through the same response is exact") {
   for (const ResponsePoint& point : kResponse) points.push_back({point.exposure, point.signal});
   const auto line = fit_line(points);
   REQUIRE(line);
+  double relative_sum = 0, largest = 0, smallest = 0;
+  for (const LinePoint& point : points) {
+    const double residual = point.y - line->at(point.x);
+    relative_sum += std::abs(residual / line->at(point.x)) / static_cast<double>(points.size());
+    largest = std::max(largest, residual);
+    smallest = std::min(smallest, residual);
+  }
   const std::array rows{
+      CheckRow{"LE-03", "mean relative residual [%]", 100 * relative_sum, 0.4340648458, 1e-10, Mark::derived,
+               kSource},
+      CheckRow{"LE-03", "half the range of residuals [DN]", (largest - smallest) / 2, 2.0, 1e-11,
+               Mark::derived, kSource},
       CheckRow{"LE-03", "a0", line->intercept, 4.4, 1e-11, Mark::derived, kSource},
       CheckRow{"LE-03", "a1", line->slope, 97.8, 1e-11, Mark::derived, kSource},
   };

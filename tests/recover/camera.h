@@ -4,6 +4,7 @@
 
 #include <algorithm>
 #include <cmath>
+#include <functional>
 #include <numeric>
 #include <optional>
 #include <string>
@@ -32,7 +33,14 @@ struct Measurement {
   std::vector<RegionTruth> truth;
 };
 
-inline Measurement measure_scene(const Scene& scene, int threads = 2) {
+/// What a camera does to its codes before it hands them out: to each by itself, and to a whole frame.
+using CodeChange = std::function<std::uint16_t(Conditions, std::uint16_t)>;
+using FrameChange = std::function<std::vector<std::uint16_t>(const std::vector<std::uint16_t>&, int width)>;
+
+inline Measurement measure_scene(const Scene& scene,
+                                 int threads = 2,
+                                 const CodeChange& change = {},
+                                 const FrameChange& change_frame = {}) {
   const Sensor sensor = realize(scene);
   AnalysisInput input;
   input.bit_depth = scene.camera.bit_depth;
@@ -52,8 +60,12 @@ inline Measurement measure_scene(const Scene& scene, int threads = 2) {
       const Conditions& conditions = scene.series[s].conditions;
       if ((conditions.kind == SeriesKind::flat) != flats) continue;
       std::vector<std::vector<std::uint16_t>> frames;
-      for (int f = 0; f < scene.series[s].frames; ++f)
+      for (int f = 0; f < scene.series[s].frames; ++f) {
         frames.push_back(expose(sensor, static_cast<int>(s), f));
+        if (change)
+          for (std::uint16_t& code : frames.back()) code = change(conditions, code);
+        if (change_frame) frames.back() = change_frame(frames.back(), scene.width);
+      }
       const RawFrames<std::uint16_t> raw(scene.width, scene.height, std::move(frames));
       AccumulateOptions options;
       options.threads = threads;

@@ -118,7 +118,8 @@ TEST_CASE("a selection draws what it names and refuses what it does not know") {
   REQUIRE_FALSE(wrong);
   CHECK(wrong.error().code == Errc::usage);
   CHECK(to_line(wrong.error()) ==
-        "--plots: found \"respons\", expected of all, none, photon_transfer, response, frame_means");
+        "--plots: found \"respons\", expected of all, none, photon_transfer, response, frame_means, "
+        "dark_signal, profiles, spectrograms, histograms, snr");
 }
 
 TEST_CASE("an error of gnuplot is one line") {
