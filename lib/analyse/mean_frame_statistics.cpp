@@ -23,6 +23,37 @@ std::string size_text(int width, int height) {
   return std::to_string(width) + " x " + std::to_string(height);
 }
 
+/// Sums and sums of squares of bands of rows, which do not depend on the threads.
+std::vector<std::pair<double, double>> partial_sums(const HighPassImage& image, int threads) {
+  constexpr int kRows = 64;
+  std::vector<std::pair<double, double>> out(static_cast<std::size_t>((image.height + kRows - 1) / kRows));
+  const auto width = static_cast<std::size_t>(image.width);
+  (void)for_each_item(static_cast<int>(out.size()), threads, [&](int part, int) -> Status {
+    const std::size_t begin = static_cast<std::size_t>(part * kRows) * width;
+    const std::size_t end = static_cast<std::size_t>(std::min((part + 1) * kRows, image.height)) * width;
+    constexpr std::size_t kLanes = 8;  // one running sum would wait for itself
+    double sums[kLanes] = {};
+    double squares[kLanes] = {};
+    const float* values = image.values.get();
+    std::size_t i = begin;
+    for (; i + kLanes <= end; i += kLanes)
+      for (std::size_t k = 0; k < kLanes; ++k) {
+        const auto value = static_cast<double>(values[i + k]);
+        sums[k] += value;
+        squares[k] += value * value;
+      }
+    for (std::size_t k = 0; i < end; ++i, ++k) {
+      const auto value = static_cast<double>(values[i]);
+      sums[k] += value;
+      squares[k] += value * value;
+    }
+    out[static_cast<std::size_t>(part)] = {std::accumulate(sums, sums + kLanes, 0.0),
+                                           std::accumulate(squares, squares + kLanes, 0.0)};
+    return Done{};
+  });
+  return out;
+}
+
 HighPassVariance high_pass_variance(const MeanFrameInput& input, int threads) {
   const BoxChain chain;
   const int reach = 2 * chain.border() + 1;
@@ -43,9 +74,9 @@ HighPassVariance high_pass_variance(const MeanFrameInput& input, int threads) {
   // The mean of a filtered image is small against its spread: sums lose no digits.
   double sum = 0;
   double square = 0;
-  for (const float value : filtered->view()) {
-    sum += static_cast<double>(value);
-    square += static_cast<double>(value) * static_cast<double>(value);
+  for (const auto& [part_sum, part_square] : partial_sums(*filtered, threads)) {
+    sum += part_sum;
+    square += part_square;
   }
   out.pixels = columns * rows;
   const auto count = static_cast<double>(out.pixels);
