@@ -49,7 +49,7 @@ class Transform {
       const double angle = std::numbers::pi * static_cast<double>(turns) / length;
       chirp_.push_back({std::cos(angle), -std::sin(angle)});
     }
-    filter_ = cv::Mat::zeros(1, padded_, CV_64FC2);
+    filter_ = cv::Mat(1, padded_, CV_64FC2, cv::Scalar::all(0));
     auto* filter = filter_.ptr<Complex>();
     for (int n = 0; n < length; ++n) {
       filter[n] = chirp_[static_cast<std::size_t>(n)].conj();
@@ -64,7 +64,7 @@ class Transform {
       cv::dft(lines, lines, cv::DFT_ROWS);
       return;
     }
-    cv::Mat wide = cv::Mat::zeros(lines.rows, padded_, CV_64FC2);
+    cv::Mat wide(lines.rows, padded_, CV_64FC2, cv::Scalar::all(0));
     for (int m = 0; m < lines.rows; ++m)
       for (int n = 0; n < length_; ++n)
         wide.ptr<Complex>(m)[n] = lines.ptr<Complex>(m)[n] * chirp_[static_cast<std::size_t>(n)];
@@ -117,7 +117,9 @@ struct Lines {
 /// Sum over lines `first` .. `first + count - 1` of |Y[v]|^2, v = 0 .. N/2, not normalised. Two lines are the
 /// real and the imaginary part of one: |A[v]|^2 + |B[v]|^2 = (|Z[v]|^2 + |Z[N-v]|^2) / 2.
 std::vector<double> power_of(const Lines& lines, int first, int count, const Transform& transform) {
-  cv::Mat pairs = cv::Mat::zeros((count + 1) / 2, lines.length, CV_64FC2);
+  // Not Mat::zeros(): its expression is made with a table that OpenCV sets up at the first call, in whatever
+  // thread.
+  cv::Mat pairs((count + 1) / 2, lines.length, CV_64FC2, cv::Scalar::all(0));
   // Pixels outside, lines inside: for columns that reads memory in its order.
   for (int n = 0; n < lines.length; ++n)
     for (int m = 0; m < count; ++m) {
