@@ -26,9 +26,9 @@ void print_summary(const Characterization& result, std::ostream& out) {
       if (q.region != region.name || info == nullptr) continue;
       const MeasuredText number = measured_text(q.value, q.standard_uncertainty, q.low95, q.high95);
       const std::string power = number.power.empty() ? "" : "e" + number.power;
-      const std::string text =
-          q.value ? number.value + power + " +- " + number.uncertainty + power + " " + std::string(info->unit)
-                  : "not determined: " + q.note;
+      const std::string text = q.value ? number.value + power + " +- " + number.uncertainty + power +
+                                             (info->unit == "1" ? "" : " " + std::string(info->unit))
+                                       : "not determined: " + q.note;
       out << "  " << q.name << std::string(q.name.size() < 38 ? 38 - q.name.size() : 1, ' ') << text << "\n";
     }
   }

@@ -66,9 +66,9 @@ std::string superscript(const std::string& power) {
   return out;
 }
 
-/// "DN/e-" as it is set in print.
+/// "DN/e-" as it is set in print; nothing for the unit one.
 std::string unit_text(std::string_view unit) {
-  std::string out(unit);
+  std::string out(unit == "1" ? "" : unit);
   for (std::size_t at = 0; (at = out.find("e-", at)) != std::string::npos; at += 4) out.replace(at, 2, "e⁻");
   return out.empty() ? "" : "\u00A0" + out;
 }
