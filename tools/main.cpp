@@ -77,6 +77,7 @@ int main(int argc, char** argv) {
   std::signal(
       SIGPIPE,
       SIG_IGN);  // NOLINT(bugprone-signal-handler): a closed pipe is an output error, not a silent end
+  std::signal(SIGXFSZ, SIG_IGN);  // NOLINT(bugprone-signal-handler): so is a file that may not grow
   try {
     return run(argc, argv);
   } catch (const std::bad_alloc&) {

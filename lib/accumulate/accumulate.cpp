@@ -2,6 +2,7 @@
 
 #include <algorithm>
 #include <array>
+#include <atomic>
 #include <cmath>
 #include <limits>
 #include <map>
@@ -84,9 +85,27 @@ struct BandBuffers {
   RawMemory rows;       ///< [frame of the group][row][column]
   RawMemory totals;     ///< CellTotals [band of the item][cell]
   RawMemory workspace;  ///< of the kernels
-  std::vector<std::vector<std::pair<double, double>>>
-      known;  ///< [region][block] lowest and highest code seen by this thread
 };
+
+/// Extreme codes that some thread has seen so far. What one thread does not know yet costs it a count, no
+/// more.
+struct KnownExtremes {
+  explicit KnownExtremes(std::size_t blocks) : highest(blocks) {
+    constexpr double kNone = std::numeric_limits<double>::infinity();
+    lowest = kNone;
+    for (std::atomic<double>& code : highest) code = -kNone;
+  }
+  std::atomic<double> lowest;                ///< in the region
+  std::vector<std::atomic<double>> highest;  ///< [block]
+};
+
+/// Whichever value wins a race is one that was seen.
+void lower_to(std::atomic<double>& known, double code) {
+  if (code < known.load(std::memory_order_relaxed)) known.store(code, std::memory_order_relaxed);
+}
+void raise_to(std::atomic<double>& known, double code) {
+  if (code > known.load(std::memory_order_relaxed)) known.store(code, std::memory_order_relaxed);
+}
 
 class Accumulator {
  public:
@@ -114,6 +133,7 @@ class Accumulator {
   CellKernels kernels_;
   std::vector<int> sizes_;  ///< of groups
   std::vector<Hash> hashes_;
+  std::vector<std::unique_ptr<KnownExtremes>> known_;  ///< [region]
   SeriesStatistics out_;
 };
 
@@ -132,6 +152,7 @@ Accumulator::Accumulator(const FrameStack& frames, const Geometry& geometry, con
     region.columns = grid.columns;
     region.rows = grid.rows;
     const auto blocks = static_cast<std::size_t>(grid.columns) * static_cast<std::size_t>(grid.rows);
+    known_.push_back(std::make_unique<KnownExtremes>(blocks));
     region.centre.resize(blocks);
     region.pixels.resize(blocks);
     region.total_square.resize(blocks);
@@ -201,16 +222,16 @@ Status Accumulator::measure_cells(const Band& band,
       input.pixels[static_cast<std::size_t>(f)] =
           pixels + frame_bytes * static_cast<std::size_t>(f) + pixel_bytes * static_cast<std::size_t>(cell.x);
     CellStatistics& statistics = out.cells[c * sizes_.size() + group];
-    auto& [lowest, highest] =
-        buffers.known[static_cast<std::size_t>(cell.region)][static_cast<std::size_t>(cell.block)];
-    input.known_lowest = lowest;
-    input.known_highest = highest;
+    KnownExtremes& known = *known_[static_cast<std::size_t>(cell.region)];
+    std::atomic<double>& highest = known.highest[static_cast<std::size_t>(cell.block)];
+    input.known_lowest = known.lowest.load(std::memory_order_relaxed);
+    input.known_highest = highest.load(std::memory_order_relaxed);
     kernels_.measure(input, totals[one_group ? 0 : c], workspace, statistics, out.squares[c]);
     if (statistics.bad_frame >= 0)
       return frames_.error_at(out_.regions.front().groups[group].first_frame + statistics.bad_frame,
                               "found a pixel that is not a finite number, expected finite pixels");
-    lowest = std::min(lowest, statistics.lowest.code);
-    highest = std::max(highest, statistics.highest.code);
+    lower_to(known.lowest, statistics.lowest.code);
+    raise_to(highest, statistics.highest.code);
   }
   return Done{};
 }
@@ -450,13 +471,6 @@ Result<SeriesStatistics> accumulate(const FrameStack& frames,
   const auto workers = static_cast<std::size_t>(std::max(1, options.threads));
   std::vector<BandBuffers>& buffers = kept.impl().workers;
   if (buffers.size() < workers) buffers.resize(workers);
-  for (BandBuffers& buffer : buffers) {
-    buffer.known.clear();
-    for (const BlockGrid& grid : geometry.grids) {
-      constexpr double kNone = std::numeric_limits<double>::infinity();
-      buffer.known.emplace_back(static_cast<std::size_t>(grid.columns * grid.rows), std::pair(kNone, -kNone));
-    }
-  }
 
   // Results that came before their turn wait here; as bands are handed out in order, there are few.
   std::mutex guard;

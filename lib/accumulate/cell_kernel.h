@@ -25,7 +25,7 @@ struct CellInput {
   bool first_group = true;   ///< the totals are begun, not continued; neighbours are looked at
   bool last_group = true;    ///< the totals are complete: CellSquares is filled
   double hit_threshold = 0;  ///< in standard deviations; 0: hits are not looked for
-  /// Codes that occur elsewhere in the block; extremes inside them are not counted.
+  /// Codes that occur elsewhere, in the region or in the block; extremes inside them are not counted.
   double known_lowest = std::numeric_limits<double>::infinity();
   double known_highest = -std::numeric_limits<double>::infinity();
 };

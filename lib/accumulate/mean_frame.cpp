@@ -199,10 +199,9 @@ Averager<T>::Averager(const FrameStack& frames,
   }
 }
 
-/// Median of the middle row of the first frame, for pixels wider than 16 bits.
+/// Median of the middle row of the first frame: a float holds what is small to more digits.
 template <class T>
 Status Averager<T>::choose_levels() {
-  if (sizeof(T) <= 2) return Done{};
   std::vector<T>& row = workspaces_.front().rows;
   for (PixelMeans& means : out_) {
     const Rect& rect = means.rect;

@@ -32,8 +32,7 @@ struct MeanFrameOptions {
 struct PixelMeans {
   Rect rect;
   int frames = 0;
-  /// To be added to `mean`: 0 for pixels of up to 16 bits; for wider ones a value near the region's, because
-  /// a float would cut their digits.
+  /// To be added to `mean`: a value near the region's, because a float would cut digits.
   double level_dn = 0;
   std::unique_ptr<float[]> mean;  ///< mean over frames less level_dn [DN]
   /// Temporal variance [DN^2], sum of squares over frames - 1; infinite where a float cannot hold it. Null if

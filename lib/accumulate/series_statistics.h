@@ -65,7 +65,9 @@ struct RegionStatistics {
   std::vector<std::int64_t> pixels;  ///< [block]
   std::vector<GroupStatistics> groups;
   std::vector<double> total_square;  ///< [block] sum over pixels of (sum over all frames of (y - centre))^2
-  std::vector<Extreme> lowest, highest;   ///< [block] over all frames, hits included
+  /// [block] over all frames, hits included. Of the lowest, samples are counted where no other block goes
+  /// lower.
+  std::vector<Extreme> lowest, highest;
   CodeBits bits;                          ///< over all frames, hits included
   std::vector<NeighbourSums> neighbours;  ///< [block]; no pixels where the series has one frame
   std::vector<std::int64_t> block_hits;   ///< [block] samples set aside

@@ -196,7 +196,7 @@ Characterization analyse(const AnalysisInput& input) {
     for (Quantity& q : data_sheet_quantities(levels, gain, dark, sheet))
       out.quantities.push_back(std::move(q));
     for (Finding& f : region_findings(levels, gain, response, rows)) out.findings.push_back(std::move(f));
-    for (Finding& f : data_sheet_findings(levels, gain, dark, sheet, rows))
+    for (Finding& f : data_sheet_findings(levels, gain, dark, response, sheet, rows))
       out.findings.push_back(std::move(f));
     append(out.correlations, gain.correlations, regions > 1 ? "@" + input.regions[r].name : "");
     out.curves.push_back(region_curves(levels, gain, response, dark, rows));

@@ -1,5 +1,6 @@
 #include "analyse/data_sheet_findings.h"
 
+#include <algorithm>
 #include <cmath>
 
 #include "analyse/resampling.h"
@@ -134,6 +135,40 @@ void light_findings(const RegionLevels& levels, const Efficiency& efficiency, st
          {{"wavelength_nm", wavelength}}});
 }
 
+/// Levels so far off a line that no camera but the list of exposures explains it.
+void response_findings(const Response& response,
+                       const RegionLevels& levels,
+                       const std::vector<int>& rows,
+                       std::vector<Finding>& out) {
+  if (!response.line || !response.error_percent) return;
+  // A strongly bent response has an error of 1 or 2 %; forgotten or exchanged exposures have tens (common
+  // practice, no source).
+  constexpr double kExplained_percent = 4.0;
+  const double percent = response.error_percent->value;
+  const double uncertainty = response.error_percent->statistical_uncertainty + response.floor_percent;
+  if (percent < kExplained_percent || percent < kSeen * uncertainty) return;
+  std::vector<int> series;
+  double worst = 0;
+  for (std::size_t i = 0; i < response.levels.size(); ++i) {
+    const double deviation = std::abs(response.line->deviations_percent[i]);
+    if (deviation > percent) series.push_back(rows[levels.levels()[response.levels[i]].series]);
+    worst = std::max(worst, deviation);
+  }
+  out.push_back(
+      {"exposure-mismatch",
+       Severity::problem,
+       "The signals" + in_region(levels) + " miss a line against exposure_s x light by " +
+           to_text(percent, 3) + " % in the mean and " + to_text(worst, 3) +
+           " % at worst: exposures or light levels in the session file are wrong or exchanged, or the light "
+           "changed. What rests on them is wrong; gain and noise do not. Check exposure_s and light of the "
+           "series "
+           "named.",
+       series,
+       {"linearity_error_percent", "linear_full_well_e", "shutter_offset_s", "responsivity_dn_per_photon",
+        "quantum_efficiency_percent", "absolute_threshold_photons"},
+       {{"mean_percent", percent}, {"worst_percent", worst}}});
+}
+
 }  // namespace
 
 bool offset_is_regulated(const GainAndNoise& gain, const DarkCurrent& dark) {
@@ -150,10 +185,12 @@ bool offset_is_regulated(const GainAndNoise& gain, const DarkCurrent& dark) {
 std::vector<Finding> data_sheet_findings(const RegionLevels& levels,
                                          const GainAndNoise& gain,
                                          const DarkCurrent& dark,
+                                         const Response& response,
                                          const DataSheet& sheet,
                                          const std::vector<int>& rows) {
   std::vector<Finding> out;
   range_findings(levels, sheet.full_well, out);
+  response_findings(response, levels, rows, out);
   neighbour_findings(levels, gain, rows, out);
   offset_findings(levels, gain, dark, rows, out);
   light_findings(levels, sheet.efficiency, out);

@@ -13,6 +13,7 @@ namespace evenfield {
 std::vector<Finding> data_sheet_findings(const RegionLevels& levels,
                                          const GainAndNoise& gain,
                                          const DarkCurrent& dark,
+                                         const Response& response,
                                          const DataSheet& sheet,
                                          const std::vector<int>& rows);
 

@@ -159,7 +159,7 @@ void full_well(QuantityList& b, const GainAndNoise& gain, const FullWell& well) 
                        const std::optional<double>& low_dn, const std::string& reason,
                        const std::string& method, const std::string& note) {
     if (!gain.gain) {
-      b.unknown(name, dn ? needs_gain(gain) : reason).condition = condition;
+      b.unknown(name, dn || low_dn ? needs_gain(gain) : reason).condition = condition;
       return;
     }
     if (dn) {

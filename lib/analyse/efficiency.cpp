@@ -1,5 +1,6 @@
 #include "analyse/efficiency.h"
 
+#include <algorithm>
 #include <cmath>
 
 namespace evenfield {
@@ -41,11 +42,24 @@ Efficiency find_efficiency(const RegionLevels& levels, const GainAndNoise& gain)
     noise += p * p * (std::pow(levels.mean_uncertainty(level.series), 2) + dark);
     common += std::pow(p * level.signal * input.level_relative_uncertainty, 2);
   }
-  if (!(square > 0) || !(cross > 0)) {
+  if (!(square > 0)) {
+    out.reason = "the session states no light: irradiance_w_per_m2 or exposures are 0";
+    return out;
+  }
+  if (!(cross > 0)) {
     out.reason = "the signal does not rise with the photons";
     return out;
   }
   const double slope = cross / square;
+  // What levels scatter about the line counts where it is more than their own uncertainty.
+  double residual = 0;
+  for (const std::size_t i : gain.gain_levels) {
+    const Level& level = levels.levels()[i];
+    residual += std::pow(level.signal - slope * *input.series[level.series].photons, 2);
+  }
+  const double levels_left = static_cast<double>(gain.gain_levels.size()) - 1;
+  const double scatter = levels_left > 0 ? residual / levels_left * square : 0.0;
+  noise = std::max(noise, scatter);
   const double relative_common = std::hypot(std::sqrt(common) / cross, input.irradiance_relative_uncertainty);
   out.dn_per_photon = Estimate{slope, std::sqrt(noise) / square, slope * relative_common, std::nullopt};
   if (!gain.gain) {

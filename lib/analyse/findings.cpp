@@ -172,6 +172,16 @@ void level_findings(const RegionLevels& levels,
          saturated,
          {"saturation_dn"},
          {{"top_code_dn", *levels.codes().top_code}, {"levels", static_cast<double>(saturated.size())}}});
+  if (!gain.gain)
+    add(out, {"too-few-levels",
+              Severity::problem,
+              "The gain" + in_region(levels) + " could not be had: " + gain.gain_reason +
+                  ". Numbers in electrons are missing with it. Take levels from dark to past saturation, two "
+                  "frames "
+                  "or more of each.",
+              {},
+              {"conversion_gain_dn_per_e", "read_noise_e", "saturation_capacity_e", "dynamic_range_ratio"},
+              {{"levels", static_cast<double>(levels.levels().size())}}});
   std::set<double> axes;
   for (const std::size_t i : response.levels) axes.insert(*axis_of(levels, levels.levels()[i]));
   std::set<double> gain_signals;
@@ -224,6 +234,12 @@ void dark_findings(const RegionLevels& levels,
     if (difference == 0 && !level.dark.extrapolated) continue;
     series.push_back(rows[level.series]);
     extrapolated = extrapolated || level.dark.extrapolated;
+    if (level.dark.extrapolated && level.signal > 0) {
+      double uncertainty = 0;
+      for (const auto& [s, weight] : level.dark.mean)
+        uncertainty += std::pow(weight * levels.mean_uncertainty(s), 2);
+      worst_percent = std::max(worst_percent, 100 * std::sqrt(uncertainty) / level.signal);
+    }
     if (difference == 0 || level.signal <= 0) continue;
     if (std::abs(difference) > std::abs(worst_s)) worst_s = difference;
     if (gain.gain && !levels.saturated(level))
@@ -233,16 +249,18 @@ void dark_findings(const RegionLevels& levels,
   if (series.empty()) return;
   const bool matters = worst_percent > 1.0;
   std::string message =
-      worst_s != 0 ? "Darks of one exposure serve flats of others" + in_region(levels) + ", up to " +
-                         to_text(worst_s, 3) + " s away. " +
-                         (worst_percent > 0 ? "A dark current of " + to_text(kUnseenDarkCurrent_e_per_s, 3) +
-                                                  " e-/s would change the signal by up to " +
-                                                  to_text(worst_percent, 2) + " %. "
-                                            : "What dark current does in that time is not known. ") +
-                         "Take darks at the flats' exposures."
-                   : "Some flats" + in_region(levels) +
-                         " have exposures outside those of the darks; the dark level there was extrapolated. "
-                         "Take darks at the flats' exposures.";
+      worst_s != 0
+          ? "Darks of one exposure serve flats of others" + in_region(levels) + ", up to " +
+                to_text(worst_s, 3) + " s away. " +
+                (worst_percent > 0
+                     ? "A dark current of " + to_text(kUnseenDarkCurrent_e_per_s, 3) +
+                           " e-/s would change the signal by up to " + to_text(worst_percent, 2) + " %. "
+                     : "What dark current does in that time is not known. ") +
+                "Take darks at the flats' exposures."
+          : "Some flats" + in_region(levels) +
+                " have exposures outside those of the darks; the dark level there was extrapolated, with an "
+                "uncertainty of up to " +
+                to_text(worst_percent, 2) + " % of the signal. Take darks at the flats' exposures.";
   add(out, {"unmatched-dark",
             matters ? Severity::caution : Severity::info,
             message,
@@ -262,7 +280,7 @@ void leak_findings(const RegionLevels& levels, const std::vector<int>& rows, std
     for (const auto& [s, weight] : level.dark.mean)
       uncertainty += std::pow(weight * levels.mean_uncertainty(s), 2);
     // Six standard uncertainties, and a thousandth of the dark level for what regulates it.
-    if (level.signal > -6 * std::sqrt(uncertainty) - 0.001 * dark) continue;
+    if (level.signal >= 0 || level.signal > -6 * std::sqrt(uncertainty) - 0.001 * dark) continue;
     series.push_back(rows[level.series]);
     worst = std::min(worst, level.signal);
   }
@@ -279,6 +297,30 @@ void leak_findings(const RegionLevels& levels, const std::vector<int>& rows, std
             {"conversion_gain_dn_per_e", "linearity_error_percent", "saturation_dn", "dark_offset_dn",
              "prnu_percent"},
             {{"lowest_signal_dn", worst}}});
+}
+
+/// Darks whose noise is cut off at the top code.
+void top_clipping_findings(const RegionLevels& levels,
+                           const std::vector<int>& rows,
+                           std::vector<Finding>& out) {
+  if (!levels.codes().top_code) return;
+  for (std::size_t s = 0; s < levels.input().series.size(); ++s) {
+    if (levels.input().series[s].conditions.kind == SeriesKind::flat) continue;
+    const double percent = 100 * levels.saturated_share(levels.summary(s));
+    // As at the lowest code; hot pixels of long darks are fewer.
+    constexpr double kSeen_percent = 0.5;
+    if (percent < kSeen_percent) continue;
+    add(out,
+        {"clipped-dark",
+         Severity::problem,
+         to_text(percent, 3) + " % of a dark series' samples" + in_region(levels) + " show the top code, " +
+             to_text(*levels.codes().top_code, 7) +
+             " DN. Their noise is cut off: read noise and dark offset come out too small. Lower the camera's "
+             "offset or the exposure, or shut the light out.",
+         {rows[s]},
+         {"read_noise_dn", "read_noise_e", "dark_offset_dn", "dsnu_dn", "dsnu_e", "conversion_gain_dn_per_e"},
+         {{"clipped_percent", percent}}});
+  }
 }
 
 /// Darks whose noise is cut off at the lowest code.
@@ -363,6 +405,7 @@ std::vector<Finding> region_findings(const RegionLevels& levels,
   dark_findings(levels, gain, rows, out);
   leak_findings(levels, rows, out);
   clipping_findings(levels, rows, out);
+  top_clipping_findings(levels, rows, out);
   shape_findings(levels, gain, out);
   drift_findings(levels, rows, out);
   return out;

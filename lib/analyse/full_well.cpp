@@ -10,6 +10,7 @@ namespace evenfield {
 namespace {
 
 constexpr double kTurnOff = 3.0;
+constexpr double kOneSided = 1.645;  // 95 % of a normal distribution
 
 /// Levels by rising light, as far as it is known: past saturation the signal no longer tells.
 std::vector<const Level*> by_light(const RegionLevels& levels) {
@@ -32,6 +33,9 @@ void find_charge_limit(const RegionLevels& levels, FullWell& out) {
   const Level* brightest = nullptr;  // of the signals so far
   for (const Level* level : by_light(levels)) {
     if (!level->variance || !(levels.summary(level->series).dof > 0)) continue;
+    // Where the signal itself has fallen, less light explains less variance.
+    constexpr double kSameSignal = 0.98;
+    if (brightest != nullptr && level->signal < kSameSignal * brightest->signal) continue;
     if (highest != nullptr) {
       const double step =
           std::hypot(variance_uncertainty(levels, *highest), variance_uncertainty(levels, *level));
@@ -59,7 +63,7 @@ void find_charge_limit(const RegionLevels& levels, FullWell& out) {
     return;
   }
   out.charge_reason = "the variance never turns down; the lower limit is the brightest level's signal";
-  out.charge_low95_dn = brightest->signal;
+  out.charge_low95_dn = brightest->signal - kOneSided * levels.mean_uncertainty(brightest->series);
 }
 
 void find_linear_limit(const RegionLevels& levels, const Response& response, FullWell& out) {
@@ -98,7 +102,7 @@ void find_linear_limit(const RegionLevels& levels, const Response& response, Ful
   }
   out.linear_reason = "no level is off the line by " + to_text(kLinearFullWellPercent, 2) +
                       " %; the lower limit is the brightest level's signal";
-  out.linear_low95_dn = before->signal;
+  out.linear_low95_dn = before->signal - kOneSided * levels.mean_uncertainty(before->series);
 }
 
 }  // namespace

@@ -141,10 +141,12 @@ GainAndNoise find_gain_and_noise(const RegionLevels& levels) {
   };
   if (units < 2) return give_up("the region is too small for an uncertainty: it has one block");
   std::vector<Statistics> left_out;
+  int lag_failures = 0;
   double curvature_square = 0;
   double curvature_sum = 0;
   for (int u = 0; u < units; ++u) {
     left_out.push_back(problem.without(u, fits));
+    if (whole[kLagSummed] && !left_out.back()[kLagSummed]) ++lag_failures;
     for (const int k : present)
       if (auto& value = left_out.back()[static_cast<std::size_t>(k)]; !value)
         value = whole[static_cast<std::size_t>(k)];
@@ -152,6 +154,11 @@ GainAndNoise find_gain_and_noise(const RegionLevels& levels) {
     const double moved = *left_out.back()[kCurvature] - *whole[kCurvature];
     curvature_sum += moved;
     curvature_square += moved * moved;
+  }
+  if (lag_failures > 0) {
+    whole[kLagSummed].reset();
+    std::erase(present, static_cast<int>(kLagSummed));
+    out.lag_reason = "the region has too few pixels for the covariances of neighbours";
   }
   const double curvature_uncertainty =
       std::sqrt((units - 1.0) / units * (curvature_square - curvature_sum * curvature_sum / units));

@@ -59,11 +59,10 @@ std::optional<double> GainProblem::lag_summed(const std::vector<VariancePoint>& 
                                               WholeFits& fits) {
   const auto with_lags = [&](VariancePoint point, double covariance, double pixels) {
     // A covariance of one difference of n pixels varies by V^2 / n; it counts twice, and a diagonal's four
-    // times.
-    const double v = point.variance;
-    const double spread = v * v * (2 / point.degrees_of_freedom + 24 / pixels);
+    // times. Freedom is told from numbers alone: weights that follow the scatter of the sums would bias the
+    // slope.
+    point.degrees_of_freedom = 2 / (2 / point.degrees_of_freedom + 24 / pixels);
     point.variance += covariance;
-    point.degrees_of_freedom = 2 * point.variance * point.variance / spread;
     return point;
   };
   double dark_covariance = 0;

@@ -48,7 +48,7 @@ double share_at(const Extreme& highest, double top_code, double samples) {
 Codes find_codes(const AnalysisInput& input) {
   Codes out;
   bool stepped = true;
-  double highest = 0;
+  double highest = -std::numeric_limits<double>::infinity();
   double lowest = std::numeric_limits<double>::infinity();
   double brightest = -std::numeric_limits<double>::infinity();
   const SeriesInput* bright = nullptr;
@@ -58,7 +58,7 @@ Codes find_codes(const AnalysisInput& input) {
       if (step == 0) stepped = false;
       if (step > 0 && (out.step_dn == 0 || step < out.step_dn)) out.step_dn = step;
     }
-    double mean = 0;
+    double mean = -std::numeric_limits<double>::infinity();
     for (const RegionSummary& region : series.regions) {
       highest = std::max(highest, region.highest.code);
       lowest = std::min(lowest, region.lowest.code);
@@ -89,7 +89,8 @@ Codes find_codes(const AnalysisInput& input) {
           out.plateau = true;
         }
       }
-  if (out.step_dn > 0) {
+  // Codes that are all below zero were moved: they do not tell the converter's largest.
+  if (out.step_dn > 0 && highest >= 0) {
     const double steps = std::round(highest / out.step_dn);
     // Codes in the high bits are stepped by a power of two; the converter's own codes are then highest /
     // step.
@@ -273,6 +274,12 @@ void RegionLevels::find_range_top() {
   std::erase_if(signals, [](double signal) { return std::isnan(signal); });
   const double middle = median(signals);
   if (!std::isfinite(middle)) return;
+  if (middle <= 0) {
+    top_.saturates = true;
+    top_.unresolved = "the signal at the top code comes out negative: the dark level of the flats is wrong";
+    top_.signal_dn = 0;
+    return;
+  }
   top_.signal_dn = middle;
   top_.saturates = true;
   top_.noise_dn = median(noises);

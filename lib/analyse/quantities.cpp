@@ -62,6 +62,10 @@ Quantity root_of_square(std::string name,
   q.name = std::move(name);
   q.region = region;
   q.method = std::move(method);
+  if (!(square_uncertainty > 0)) {
+    q.note = "the frames show no noise, so nothing is known of the uncertainty";
+    return q;
+  }
   if (square <= 0) {
     const double one_sided = normal_quantile(kCoverage);
     // Counted from zero: a square that came out far below it by chance must not promise that there is no

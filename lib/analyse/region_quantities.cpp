@@ -153,7 +153,8 @@ void saturation(QuantityList& b, const GainAndNoise& gain) {
     Quantity& dn = b.unknown("saturation_dn", top.unresolved);
     dn.condition = condition;
     if (top.signal_dn > 0) dn.high95 = top.signal_dn;
-    b.unknown("saturation_capacity_e", top.unresolved).condition = condition;
+    b.unknown("saturation_capacity_e", top.unresolved.substr(0, top.unresolved.find(';'))).condition =
+        condition;
     return;
   }
   if (!top.saturates) {

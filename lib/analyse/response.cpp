@@ -74,7 +74,12 @@ Response find_response(const RegionLevels& levels) {
   const auto line = fit_linearity(points);
   if (!line) {
     out.levels.clear();
-    out.reason = "no line fits the response: " + line.error().what;
+    out.reason = "no line fits the response: a signal or what the line says of it is not above 0";
+    return out;
+  }
+  if (!(line->slope > 0)) {
+    out.levels.clear();
+    out.reason = "the signal does not rise with exposure_s x light";
     return out;
   }
   out.line = *line;

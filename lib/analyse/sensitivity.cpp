@@ -38,7 +38,8 @@ void find_dark_noise(const RegionLevels& levels, const GainAndNoise& gain, Sensi
 
 std::string no_saturation_reason(const RegionLevels& levels) {
   if (levels.levels().empty()) return "needs flats and matching darks";
-  if (!levels.top().unresolved.empty()) return levels.top().unresolved;
+  if (!levels.top().unresolved.empty())
+    return "saturation has no value: " + levels.top().unresolved.substr(0, levels.top().unresolved.find(';'));
   if (!levels.top().saturates)
     return "the session does not saturate; the lower limit is that of the brightest level";
   return "";

