@@ -50,9 +50,9 @@ AnalysisInput begin_input(const Session& session) {
     SeriesInput& out = input.series.emplace_back();
     out.conditions = series.conditions;
     const Light& light = series.light;
+    out.wavelength_nm = light.wavelength_nm;
     if (session.camera.pixel_pitch_um && light.wavelength_nm && light.irradiance_w_per_m2) {
       input.has_light = true;
-      out.wavelength_nm = light.wavelength_nm;
       if (series.conditions.exposure_s)
         out.photons = photons_per_pixel(*session.camera.pixel_pitch_um, *light.wavelength_nm,
                                         *light.irradiance_w_per_m2 * series.conditions.light,
@@ -188,7 +188,10 @@ Status look_again(const OpenedSession& opened, const MeasureOptions& options, An
       const RegionSummary& summary = input.series[look.series].regions[r];
       PixelMeans& image = (*images)[r];
       MeanFrameFacts facts;
-      if (image.variance) facts.median_noise_dn = median_deviation(image.variances());
+      if (image.variance) {
+        facts.median_noise_dn = median_deviation(image.variances());
+        facts.noise_log_variance = log_deviation_variance(image.variances());
+      }
       image.variance.reset();  // before the next image of a float a pixel is made
       MeanFrameInput in;
       in.pixels = image.means();
@@ -197,6 +200,8 @@ Status look_again(const OpenedSession& opened, const MeasureOptions& options, An
       in.level_dn = image.level_dn;
       in.frames = image.frames;
       in.noise_left_dn2 = summary.variance.value_or(0.0) / image.frames;
+      in.row_noise_left_dn2 =
+          std::clamp(summary.row_noise_variance.value_or(0.0) / image.frames, 0.0, in.noise_left_dn2);
       in.continuous = input.floating;
       MeanFrameStatisticsOptions what;
       what.pictures = options.pictures && look.pictures;

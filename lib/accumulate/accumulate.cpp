@@ -302,6 +302,7 @@ void merge_extreme(Extreme& into, const Extreme& other, bool highest, bool begun
 
 void add_neighbours(NeighbourSums& into, const NeighbourSums& other) {
   into.pixels += other.pixels;
+  into.cells += other.cells;
   into.square += other.square;
   for (std::size_t k = 0; k < kNeighbours; ++k) {
     into.pairs[k] += other.pairs[k];

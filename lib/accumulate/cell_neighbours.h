@@ -35,7 +35,8 @@ Product across_end(const CellInput& cell, const C* d, int rows_on) {
   return sum;
 }
 
-/// `lags`: sums of products of the difference, with zeros behind it, with itself 0, 1, width and width + 1
+/// `lags`: sums of products of the difference, with zeros behind it, with itself 0, 1, width, width + 1 and
+/// width - 1
 /// places on.
 template <class C, class Product, class Sum>
 NeighbourSums neighbour_sums(const CellInput& cell,
@@ -45,21 +46,29 @@ NeighbourSums neighbour_sums(const CellInput& cell,
   const int w = cell.width;
   const int h = cell.height;
   const double n = w * h;
+  // Down to the left, products that run from the first pixel of a row end at the last of the same row.
+  Product along = 0;
+  for (int y = 0; y < h; ++y)
+    along += static_cast<Product>(d[y * w]) * static_cast<Product>(d[y * w + w - 1]);
   const Product products[kNeighbours] = {lags[1] - across_end<Product>(cell, d, 1), lags[2],
-                                         lags[3] - across_end<Product>(cell, d, 2)};
+                                         lags[3] - across_end<Product>(cell, d, 2), lags[4] - along};
   // Sums over the pixels that begin a pair, plus those over the pixels that end one.
+  const Sum other_corners = static_cast<Sum>(d[(h - 1) * w]) + static_cast<Sum>(d[w - 1]);
   const Sum corners = static_cast<Sum>(d[0]) + static_cast<Sum>(d[w * h - 1]);
-  const Sum ends[kNeighbours] = {
-      2 * edges.all - edges.last_column - edges.first_column,
-      2 * edges.all - edges.last_row - edges.first_row,
-      2 * edges.all - edges.last_row - edges.last_column - edges.first_row - edges.first_column + corners};
+  const Sum diagonal =
+      2 * edges.all - edges.last_row - edges.last_column - edges.first_row - edges.first_column;
+  const Sum ends[kNeighbours] = {2 * edges.all - edges.last_column - edges.first_column,
+                                 2 * edges.all - edges.last_row - edges.first_row, diagonal + corners,
+                                 diagonal + other_corners};
   NeighbourSums out;
   const double mean = static_cast<double>(edges.all) / n;
   const double square = static_cast<double>(lags[0]) - mean * static_cast<double>(edges.all);
   const double variance = n > 1 ? square / (n - 1) : 0.0;
   out.pixels = std::int64_t{w} * h;
+  out.cells = 1;
   out.square = n * variance;
-  out.pairs = {std::int64_t{w - 1} * h, std::int64_t{w} * (h - 1), std::int64_t{w - 1} * (h - 1)};
+  const std::int64_t diagonals = std::int64_t{w - 1} * (h - 1);
+  out.pairs = {std::int64_t{w - 1} * h, std::int64_t{w} * (h - 1), diagonals, diagonals};
   for (int k = 0; k < kNeighbours; ++k) {
     const auto i = static_cast<std::size_t>(k);
     const auto pairs = static_cast<double>(out.pairs[i]);
@@ -136,7 +145,8 @@ inline NeighbourSums real_neighbours(const CellInput& cell, const CellStatistics
   sum_edges(cell, d, edges);
   const int w = cell.width;
   const double lags[kNeighbours + 1] = {real_dot(d, d, pixels), real_dot(d, d + 1, pixels),
-                                        real_dot(d, d + w, pixels), real_dot(d, d + w + 1, pixels)};
+                                        real_dot(d, d + w, pixels), real_dot(d, d + w + 1, pixels),
+                                        real_dot(d, d + w - 1, pixels)};
   return neighbour_sums(cell, d, lags, edges);
 }
 

@@ -401,7 +401,7 @@ inline void whole_lags(const WholeWorkspace& work,
                        int width,
                        std::int64_t (&sums)[kNeighbours + 1]) {
   const std::int16_t* d = work.difference.data();
-  const int apart[kNeighbours + 1] = {0, 1, width, width + 1};
+  const int apart[kNeighbours + 1] = {0, 1, width, width + 1, width - 1};
   __m256i sum[kNeighbours + 1];
   for (__m256i& s : sum) s = _mm256_setzero_si256();
   for (int p = 0; p < pixels; p += kLane) {

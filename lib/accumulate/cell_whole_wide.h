@@ -66,7 +66,7 @@ inline void wide_lags(const WholeWorkspace& work,
                       int width,
                       std::int64_t (&sums)[kNeighbours + 1]) {
   const std::int16_t* d = work.difference.data();
-  const int apart[kNeighbours + 1] = {0, 1, width, width + 1};
+  const int apart[kNeighbours + 1] = {0, 1, width, width + 1, width - 1};
   for (int k = 0; k <= kNeighbours; ++k) {
     std::int64_t sum = 0;
     for (int p = 0; p < pixels; ++p) sum += std::int32_t{d[p]} * std::int32_t{d[p + apart[k]]};

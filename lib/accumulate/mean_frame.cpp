@@ -389,4 +389,20 @@ double median_deviation(std::span<float> values) {
   return (upper + std::sqrt(static_cast<double>(*std::max_element(values.begin(), middle)))) / 2;
 }
 
+double log_deviation_variance(std::span<float> values) {
+  assert(!values.empty());
+  const auto at = [&](double share) {
+    const auto place =
+        values.begin() + static_cast<std::ptrdiff_t>(share * static_cast<double>(values.size() - 1));
+    std::nth_element(values.begin(), place, values.end());
+    return static_cast<double>(*place);
+  };
+  const double lower = at(0.25);
+  const double upper = at(0.75);
+  if (!(lower > 0)) return 0;
+  constexpr double kQuartiles = 1.3489795;  // of a normal distribution, in its standard deviations
+  const double spread = std::log(upper / lower) / 2 / kQuartiles;
+  return spread * spread;
+}
+
 }  // namespace evenfield

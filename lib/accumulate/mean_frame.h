@@ -58,4 +58,8 @@ Result<std::vector<PixelMeans>> mean_frame(const FrameStack& frames,
 /// in another order: a copy of an image would double the memory.
 double median_deviation(std::span<float> variances);
 
+/// Variance of the logarithms of those roots, from their quartiles, as if they were normally distributed:
+/// what a few noisy pixels do not move. 0 if a quarter has no variance.
+double log_deviation_variance(std::span<float> variances);
+
 }  // namespace evenfield

@@ -44,14 +44,15 @@ struct CodeBits {
   std::uint64_t all = 0;  ///< set in every code
 };
 
-/// Neighbours in a row, in a column, and along a diagonal to the right and down.
-inline constexpr int kNeighbours = 3;
+/// Neighbours in a row, in a column, and along the diagonals down to the right and down to the left.
+inline constexpr int kNeighbours = 4;
 
 /// Of the difference of the first two frames, each cell's mean taken out: square / pixels estimates its
 /// variance without bias, products / pairs its covariance between neighbours, without bias where that is
 /// small. Pairs lie inside cells.
 struct NeighbourSums {
   std::int64_t pixels = 0;
+  std::int64_t cells = 0;
   double square = 0;
   std::array<std::int64_t, kNeighbours> pairs{};
   std::array<double, kNeighbours> products{};

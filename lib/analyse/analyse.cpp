@@ -34,7 +34,10 @@ SeriesResult series_result(const RegionLevels& levels, std::size_t series) {
     const auto level = std::find_if(levels.levels().begin(), levels.levels().end(),
                                     [&](const Level& l) { return l.series == series; });
     if (level != levels.levels().end())
-      out.flicker_percent = 100 * std::sqrt(std::max(0.0, *summary.frame_mean_variance)) / level->signal;
+      out.flicker_percent =
+          100 *
+          std::sqrt(std::max(0.0, *summary.frame_mean_variance - std::pow(levels.offset_jitter_dn(), 2))) /
+          level->signal;
   }
   out.hits = summary.hits;
   out.files = input.files;

@@ -20,6 +20,7 @@ struct MeanFrameFacts {
   HighPassVariance high_pass;
   std::optional<MeanFrame> pictures;
   std::optional<double> median_noise_dn;  ///< median over pixels of the temporal standard deviation
+  double noise_log_variance = 0;          ///< over pixels, of the logarithm of that
 };
 
 struct AnalysisInput {

@@ -15,8 +15,11 @@ void find_variance_slope(const RegionLevels& levels, DarkCurrent& out) {
   for (const std::size_t s : out.series) {
     const RegionSummary& dark = levels.summary(s);
     if (!dark.variance || !(*dark.variance > 0) || !(dark.dof > 0)) continue;
+    // Noise that rows share makes pixels of a row count less (METHODS 1.2: nu / sum of squared correlations).
+    const double share = std::max(0.0, dark.row_noise_variance.value_or(0.0)) / *dark.variance;
+    const double dof = dark.dof / (1 + share * share * std::max(0, dark.columns - 1));
     points.push_back({*levels.input().series[s].conditions.exposure_s, *dark.variance,
-                      dark.dof / (2 * *dark.variance * *dark.variance)});
+                      dof / (2 * *dark.variance * *dark.variance)});
     series.push_back(s);
   }
   if (exposure_count(levels.input(), series) < 2) {

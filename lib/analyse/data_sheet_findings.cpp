@@ -45,7 +45,7 @@ void neighbour_findings(const RegionLevels& levels,
     const UnitSums dark(levels.summary(series), ResamplingUnit::blocks);
     dark_covariance += weight * dark.neighbour_covariance(-1);
     dark_variance += weight * dark.variance(-1);
-    dark_spread += weight * weight * 24 * std::pow(dark.variance(-1), 2) / dark.neighbour_pixels(-1);
+    dark_spread += weight * weight * 16 * std::pow(dark.variance(-1), 2) / dark.neighbour_pixels(-1);
   }
   double weights = 0;
   double share = 0;
@@ -56,7 +56,7 @@ void neighbour_findings(const RegionLevels& levels,
     const double photons = flat.variance(-1) - dark_variance;
     if (!(photons > 0)) continue;
     const double spread =
-        (24 * std::pow(flat.variance(-1), 2) / flat.neighbour_pixels(-1) + dark_spread) / (photons * photons);
+        (16 * std::pow(flat.variance(-1), 2) / flat.neighbour_pixels(-1) + dark_spread) / (photons * photons);
     share += (flat.neighbour_covariance(-1) - dark_covariance) / photons / spread;
     weights += 1 / spread;
     series.push_back(rows[level.series]);
@@ -103,36 +103,41 @@ void offset_findings(const RegionLevels& levels,
 }
 
 void light_findings(const RegionLevels& levels, const Efficiency& efficiency, std::vector<Finding>& out) {
-  if (!efficiency.percent || !efficiency.wavelength_nm) return;
   // Photons of more than 3.6 eV (340 nm) may free more than one electron in silicon; silicon sees 190 to 1100
   // nm (common practice, no source).
   constexpr double kOneElectron_nm = 340;
   constexpr double kShortest_nm = 190;
   constexpr double kLongest_nm = 1100;
-  const double percent = efficiency.percent->value;
-  const double uncertainty =
-      std::hypot(efficiency.percent->statistical_uncertainty, efficiency.percent->common_uncertainty);
-  const double wavelength = *efficiency.wavelength_nm;
-  if (wavelength >= kOneElectron_nm && percent - 3 * uncertainty > 100)
-    out.push_back({"impossible-efficiency",
-                   Severity::problem,
-                   "The quantum efficiency" + in_region(levels) + " comes out as " + to_text(percent, 4) +
-                       " % (standard uncertainty " + to_text(uncertainty, 2) +
-                       " %), more than every photon. Check the irradiance in the sensor's plane and its "
-                       "unit, the pixel "
-                       "pitch with binning, wavelength and gain.",
-                   {},
-                   {"quantum_efficiency_percent", "responsivity_dn_per_photon", "absolute_threshold_photons"},
-                   {{"quantum_efficiency_percent", percent}, {"uncertainty_percent", uncertainty}}});
-  if (wavelength < kShortest_nm || wavelength > kLongest_nm)
+  const std::vector<std::string> touched{"quantum_efficiency_percent", "responsivity_dn_per_photon",
+                                         "absolute_threshold_photons"};
+  for (const Level& level : levels.levels()) {
+    const auto& wavelength = levels.input().series[level.series].wavelength_nm;
+    if (!wavelength || (*wavelength >= kShortest_nm && *wavelength <= kLongest_nm)) continue;
     out.push_back(
         {"wavelength-range",
          Severity::caution,
-         "The wavelength of " + to_text(wavelength, 5) +
+         "The wavelength of " + to_text(*wavelength, 5) +
              " nm lies outside 190 to 1100 nm, where silicon sees light: check wavelength_nm and its unit.",
          {},
-         {"quantum_efficiency_percent", "responsivity_dn_per_photon", "absolute_threshold_photons"},
-         {{"wavelength_nm", wavelength}}});
+         touched,
+         {{"wavelength_nm", *wavelength}}});
+    break;
+  }
+  if (!efficiency.percent || !efficiency.wavelength_nm || *efficiency.wavelength_nm < kOneElectron_nm) return;
+  const double percent = efficiency.percent->value;
+  const double uncertainty =
+      std::hypot(efficiency.percent->statistical_uncertainty, efficiency.percent->common_uncertainty);
+  if (percent - 3 * uncertainty <= 100) return;
+  out.push_back(
+      {"impossible-efficiency",
+       Severity::problem,
+       "The quantum efficiency" + in_region(levels) + " comes out as " + to_text(percent, 4) +
+           " % (standard uncertainty " + to_text(uncertainty, 2) +
+           " %), more than every photon. Check the irradiance in the sensor's plane and its unit, the pixel "
+           "pitch with binning, wavelength and gain.",
+       {},
+       touched,
+       {{"quantum_efficiency_percent", percent}, {"uncertainty_percent", uncertainty}}});
 }
 
 /// Levels so far off a line that no camera but the list of exposures explains it.

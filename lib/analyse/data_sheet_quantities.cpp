@@ -44,12 +44,27 @@ void noise_parts(QuantityList& b, const GainAndNoise& gain, const DarkNoiseParts
     b.unknown("row_noise_dn", parts.row_reason);
     b.unknown("row_noise_e", parts.row_reason);
   }
-  if (parts.frame)
-    b.root("offset_jitter_dn", *parts.frame, 1.0, 0.0,
-           "scatter of the frame means of the darks, noise of pixels and rows taken out", "")
-        .condition = condition_of(b.levels().input().series[parts.frame->series].conditions);
-  else
+  if (parts.frame) {
+    Quantity& q =
+        b.root("offset_jitter_dn", *parts.frame, 1.0, 0.0,
+               "scatter of the frame means of the darks of the shortest exposure, the series of most frames; "
+               "noise of pixels and rows taken out",
+               "");
+    q.condition = condition_of(b.levels().input().series[parts.frame->series].conditions);
+    // Few frames: their scatter is distributed as chi^2, whose interval is not symmetric.
+    const double dof = b.levels().summary(parts.frame->series).frames - 1.0;
+    const double own =
+        parts.frame->square_uncertainty / std::sqrt(2 / dof) - std::max(0.0, parts.frame->square);
+    const auto [low, high] = deviation_interval_factors(0.95, dof);
+    const double total = parts.frame->square + own;
+    if (q.value) {
+      q.degrees_of_freedom = dof;
+      q.low95 = std::sqrt(std::max(0.0, total * low * low - own));
+      q.high95 = std::sqrt(std::max(0.0, total * high * high - own));
+    }
+  } else {
     b.unknown("offset_jitter_dn", parts.frame_reason);
+  }
 }
 
 void median_noise(QuantityList& b, const GainAndNoise& gain) {
@@ -64,11 +79,14 @@ void median_noise(QuantityList& b, const GainAndNoise& gain) {
   const auto& looks = levels.input().mean_frames;
   std::string reason;
   std::optional<double> median;
+  double log_variance = 0;
   if (dark.frames < kFramesForPixelNoise)
     reason = "needs " + std::to_string(kFramesForPixelNoise) +
              " dark frames of one series or more; there are " + std::to_string(dark.frames);
-  else if (*series < looks.size() && levels.region() < looks[*series].size())
+  else if (*series < looks.size() && levels.region() < looks[*series].size()) {
     median = looks[*series][levels.region()].median_noise_dn;
+    log_variance = looks[*series][levels.region()].noise_log_variance;
+  }
   if (reason.empty() && !median) reason = "the noise of single pixels was not looked at";
   if (reason.empty() && !gain.gain) reason = needs_gain(gain);
   if (reason.empty() && !gain.read_noise_dn) reason = gain.read_noise_reason;
@@ -77,17 +95,16 @@ void median_noise(QuantityList& b, const GainAndNoise& gain) {
     return;
   }
   // The median of standard deviations of F frames, freed of its bias and of quantization.
-  const double sigma = *median / deviation_median(dark.frames);
+  const double sigma = *median / deviation_median(dark.frames, log_variance);
   const double square = sigma * sigma - quantization_variance(levels.codes().step_dn);
   if (!(square > 0)) {
     b.unknown("read_noise_median_e", "the step of the codes hides the noise").condition = condition;
     return;
   }
   const double noise = std::sqrt(square);
-  // Spread of a median of n values of relative standard deviation 1/sqrt(2 (F-1)): sqrt(pi/2) that of the
-  // mean.
-  const double relative =
-      std::sqrt(std::numbers::pi / 2 / (2 * (dark.frames - 1) * dark.pixels)) * sigma * sigma / square;
+  // A median of n values scatters sqrt(pi/2) times as much as their mean.
+  const double spread = std::max(log_variance, deviation_log_variance(dark.frames));
+  const double relative = std::sqrt(std::numbers::pi / 2 * spread / dark.pixels) * sigma * sigma / square;
   b.known("read_noise_median_e",
           product(noise, noise * relative, std::nullopt, 1 / gain.gain->value, inverse(*gain.gain)),
           "median over the pixels of their temporal standard deviation in " + std::to_string(dark.frames) +
@@ -98,7 +115,9 @@ void median_noise(QuantityList& b, const GainAndNoise& gain) {
 void pattern_parts(QuantityList& b, const GainAndNoise& gain, const DataSheet& sheet) {
   const RegionLevels& levels = b.levels();
   const Nonuniformity& whole = sheet.nonuniformity;
-  const std::string lines = "rows, columns and pixels as random effects, temporal noise taken out";
+  const std::string lines =
+      "rows, columns and pixels as random effects, temporal noise of pixels and rows taken out";
+  const std::string less = "of the flat near half range less its dark: ";
   const std::string filter =
       "mean frame less its low-pass (boxes of 7 and 11 pixels and a binomial of 3), as EMVA 1288 R3.1 has it "
       "(from "
@@ -146,10 +165,10 @@ void pattern_parts(QuantityList& b, const GainAndNoise& gain, const DataSheet& s
       whole.light ? whole.light_signal_uncertainty_dn / whole.light_signal_dn : 0.0;
   const PatternParts& p = sheet.patterns.light;
   const std::string uneven = "unfiltered: uneven light is part of it";
-  put("prnu_row_percent", p.row, p.reason, signal, signal_relative, light, lines, uneven);
-  put("prnu_column_percent", p.column, p.reason, signal, signal_relative, light, lines, uneven);
-  put("prnu_pixel_percent", p.pixel, p.reason, signal, signal_relative, light, lines, uneven);
-  put("prnu_highpass_percent", p.high_pass, p.high_pass_reason, signal, signal_relative, light, filter,
+  put("prnu_row_percent", p.row, p.reason, signal, signal_relative, light, less + lines, uneven);
+  put("prnu_column_percent", p.column, p.reason, signal, signal_relative, light, less + lines, uneven);
+  put("prnu_pixel_percent", p.pixel, p.reason, signal, signal_relative, light, less + lines, uneven);
+  put("prnu_highpass_percent", p.high_pass, p.high_pass_reason, signal, signal_relative, light, less + filter,
       filtered(p, signal, "%"));
 }
 
@@ -176,8 +195,9 @@ void full_well(QuantityList& b, const GainAndNoise& gain, const FullWell& well) 
                                : "";
   put("full_well_e", well.charge_dn, well.charge_low95_dn,
       well.charge_reason + (maximum.empty() ? "" : "; " + maximum),
-      "highest signal before the temporal variance falls three standard uncertainties below its maximum; "
-      "between levels evenly distributed",
+      "highest signal, once the temporal variance has fallen three standard uncertainties below its maximum; "
+      "the "
+      "last level before that bounds it from below",
       maximum);
   put("linear_full_well_e", well.linear_dn, well.linear_low95_dn, well.linear_reason,
       "from half of the range top upward, first crossing of " + to_text(kLinearFullWellPercent, 2) +
@@ -275,6 +295,14 @@ void dark_current(QuantityList& b, const GainAndNoise& gain, const DarkCurrent& 
       .condition = condition;
 }
 
+/// Photons are counted from the stated exposures.
+std::string clock_note(const ShutterOffset& shutter) {
+  if (!shutter.seconds || std::abs(shutter.seconds->value) < 5 * shutter.seconds->statistical_uncertainty)
+    return "";
+  return "photons are counted for the stated exposures; light was collected for " +
+         to_text(shutter.seconds->value, 3) + " s more (shutter_offset_s), which is not taken into account";
+}
+
 void response(QuantityList& b, const ShutterOffset& shutter, const Efficiency& efficiency) {
   const Condition condition = light_condition(b.levels());
   if (shutter.seconds)
@@ -289,13 +317,14 @@ void response(QuantityList& b, const ShutterOffset& shutter, const Efficiency& e
   if (efficiency.dn_per_photon)
     b.known("responsivity_dn_per_photon", *efficiency.dn_per_photon,
             "unweighted line through the origin of signal against photons, levels of the gain, after EMVA "
-            "1288 (from memory)")
+            "1288 (from memory)",
+            clock_note(shutter))
         .condition = light;
   else
     b.unknown("responsivity_dn_per_photon", efficiency.reason).condition = light;
   if (efficiency.percent)
     b.known("quantum_efficiency_percent", *efficiency.percent,
-            "responsivity over conversion gain, of the whole pixel area")
+            "responsivity over conversion gain, of the whole pixel area", clock_note(shutter))
         .condition = light;
   else
     b.unknown("quantum_efficiency_percent", efficiency.reason).condition = light;

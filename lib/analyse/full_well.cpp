@@ -46,12 +46,15 @@ void find_charge_limit(const RegionLevels& levels, FullWell& out) {
           out.charge_reason = "converter-limited: the variance turns down where pixels show the top code";
           return;
         }
-        // The turn lies somewhere between this level and the next, evenly distributed.
-        const double spacing = std::abs(level->signal - brightest->signal);
-        out.charge_dn =
-            Estimate{brightest->signal,
-                     std::hypot(spacing / std::sqrt(3.0), levels.mean_uncertainty(brightest->series)), 0.0,
-                     std::nullopt};
+        // Full wells lie between the last level before and the highest signal that is reached without the top
+        // code.
+        const double low = brightest->signal;
+        double high = low;
+        for (const Level& any : levels.levels())
+          if (!levels.saturated(any)) high = std::max(high, any.signal);
+        out.charge_dn = Estimate{
+            high, std::hypot((high - low) / std::sqrt(12.0), levels.mean_uncertainty(brightest->series)), 0.0,
+            std::nullopt};
         return;
       }
     }
@@ -90,7 +93,9 @@ void find_linear_limit(const RegionLevels& levels, const Response& response, Ful
       const double slope = (level->signal - before->signal) / (deviation - deviation_before);
       const double noise = std::hypot((1 - share) * levels.mean_uncertainty(before->series) / before->signal,
                                       share * levels.mean_uncertainty(level->series) / level->signal);
-      out.linear_dn = Estimate{signal, std::abs(slope) * 100 * noise, 0.0, std::nullopt};
+      // Where between the two levels the response leaves the line a kink does not tell.
+      const double bracket = std::abs(level->signal - before->signal) / std::sqrt(12.0);
+      out.linear_dn = Estimate{signal, std::hypot(bracket, slope * 100 * noise), 0.0, std::nullopt};
       return;
     }
     before = level;

@@ -1,10 +1,11 @@
 #pragma once
 /// Where the charge of a pixel ends, and where its response leaves the line. Signals in DN above the dark.
 ///
-/// Full well: the highest signal before the temporal variance falls below its running maximum by three of its
-/// standard uncertainties (photon transfer turn-off; common practice, no source), if pixels do not sit at the
-/// top code there: else the converter is the limit. Linear full well: from half of the range top upward the
-/// first crossing of 1 % from the line of the linearity error, interpolated (common practice, no source).
+/// Full well: where the temporal variance falls below its running maximum by three of its standard
+/// uncertainties (photon transfer turn-off; common practice, no source) and pixels do not sit at the top
+/// code, the highest signal that is reached; else the converter is the limit. Linear full well: from half of
+/// the range top upward the first crossing of 1 % from the line of the linearity error, interpolated (common
+/// practice, no source).
 
 #include <optional>
 #include <string>

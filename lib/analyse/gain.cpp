@@ -37,9 +37,10 @@ bool follows_curve(const RegionLevels& levels,
   // response stays bent.
   bool accounted = false;
   if (fits.lag_curve) {
-    const double left = std::abs(fits.lag_curve->curvature);
-    accounted = left < 0.5 * std::abs(fits.curve->curvature) ||
-                left < 2 * std::sqrt(fits.lag_curve->covariance(2, 2));
+    // Is what is left nearer to nothing than to the whole curvature?
+    const double left = fits.lag_curve->curvature;
+    accounted = left / fits.curve->curvature < 0.5 ||
+                std::abs(left) < 2 * std::sqrt(fits.lag_curve->covariance(2, 2));
   }
   const std::string seen =
       "the relation is curved by " + to_text(significance, 2) + " standard uncertainties";

@@ -58,10 +58,9 @@ std::optional<double> GainProblem::lag_summed(const std::vector<VariancePoint>& 
                                               int left_out,
                                               WholeFits& fits) {
   const auto with_lags = [&](VariancePoint point, double covariance, double pixels) {
-    // A covariance of one difference of n pixels varies by V^2 / n; it counts twice, and a diagonal's four
-    // times. Freedom is told from numbers alone: weights that follow the scatter of the sums would bias the
-    // slope.
-    point.degrees_of_freedom = 2 / (2 / point.degrees_of_freedom + 24 / pixels);
+    // A covariance of one difference of n pixels varies by V^2 / n, and each of four counts twice. Freedom is
+    // told from numbers alone: weights that follow the scatter of the sums would bias the slope.
+    point.degrees_of_freedom = 2 / (2 / point.degrees_of_freedom + 16 / pixels);
     point.variance += covariance;
     return point;
   };

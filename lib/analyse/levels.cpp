@@ -147,22 +147,30 @@ double RegionLevels::dark_variance(const SeriesWeights& weights) const {
 }
 
 void RegionLevels::find_scatter() {
-  double flicker = 0;
   double jitter = 0;
-  for (const Level& level : levels_) {
-    const RegionSummary& flat = summary(level.series);
-    if (!flat.frame_mean_variance || !flat.scaled || saturated(level)) continue;
-    flicker += (flat.frames - 1) * *flat.frame_mean_variance / (level.signal * level.signal);
-    flicker_dof_ += flat.frames - 1;
-  }
   for (std::size_t s = 0; s < input_.series.size(); ++s) {
     const RegionSummary& dark = summary(s);
     if (input_.series[s].conditions.kind == SeriesKind::flat || !dark.frame_mean_variance) continue;
     jitter += (dark.frames - 1) * *dark.frame_mean_variance;
     jitter_dof_ += dark.frames - 1;
   }
-  if (flicker_dof_ > 0) flicker_ = std::sqrt(std::max(0.0, flicker / flicker_dof_));
   if (jitter_dof_ > 0) jitter_ = std::sqrt(std::max(0.0, jitter / jitter_dof_));
+  // What the dark level scatters is no scatter of the light. Dim levels, where it would be a per mille of the
+  // signal or more, say little of the light.
+  constexpr double kFlickerThatMatters = 1e-3;
+  const double dim = jitter_ / kFlickerThatMatters;
+  double flicker = 0;
+  double weights = 0;
+  for (const Level& level : levels_) {
+    const RegionSummary& flat = summary(level.series);
+    if (!flat.frame_mean_variance || !flat.scaled || saturated(level)) continue;
+    const double square = level.signal * level.signal;
+    const double weight = (flat.frames - 1) * std::pow(square / (square + dim * dim), 2);
+    flicker += weight * (*flat.frame_mean_variance - jitter_ * jitter_) / square;
+    weights += weight;
+    flicker_dof_ += flat.frames - 1;
+  }
+  if (weights > 0) flicker_ = std::sqrt(std::max(0.0, flicker / weights));
 }
 
 double RegionLevels::mean_uncertainty(std::size_t series) const {

@@ -79,8 +79,10 @@ HighPassVariance high_pass_variance(const MeanFrameInput& input, int threads) {
     square += part_square;
   }
   out.pixels = columns * rows;
+  const double noise_left = out.noise_gain * (input.noise_left_dn2 - input.row_noise_left_dn2) +
+                            line_pattern_gain(chain) * input.row_noise_left_dn2;
   const auto count = static_cast<double>(out.pixels);
-  out.filtered_dn2 = (square - sum * sum / count) / (count - 1) - out.noise_gain * input.noise_left_dn2;
+  out.filtered_dn2 = (square - sum * sum / count) / (count - 1) - noise_left;
   out.variance_dn2 = *out.filtered_dn2 / out.noise_gain;
   return out;
 }

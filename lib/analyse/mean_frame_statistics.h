@@ -20,6 +20,7 @@ struct MeanFrameInput {
   int frames = 0;
   /// Variance that temporal noise leaves in each pixel: that of one frame over the number of frames [DN^2].
   double noise_left_dn2 = 0;
+  double row_noise_left_dn2 = 0;  ///< the part of it that the pixels of a row share: lines to the filter
   /// Pixels are no whole numbers, so that means are no multiples of 1 / frames: bins of histograms then only
   /// follow the range of values.
   bool continuous = false;

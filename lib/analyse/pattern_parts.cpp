@@ -61,8 +61,13 @@ std::optional<PatternPart> high_pass_part(const RegionLevels& levels,
   }
   filtered = found.filtered_dn2;
   const RegionSummary& s = levels.summary(series);
-  const double variance = spatial_variance_variance(
+  double variance = spatial_variance_variance(
       *found.variance_dn2, *s.variance, {static_cast<double>(found.pixels), static_cast<double>(s.frames)});
+  // As for the unfiltered pattern: noise of rows once more.
+  if (s.row_noise_variance && *s.row_noise_variance > 0 && s.rows > 1)
+    variance += spatial_variance_variance(s.row_pattern_variance - *s.row_noise_variance / s.frames,
+                                          *s.row_noise_variance,
+                                          {static_cast<double>(s.rows), static_cast<double>(s.frames)});
   return PatternPart{*found.variance_dn2, std::sqrt(variance), std::nullopt};
 }
 

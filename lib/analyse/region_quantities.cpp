@@ -40,7 +40,7 @@ void gain_models(QuantityList& b, const GainAndNoise& gain, const std::string& r
   put("conversion_gain_lag_summed_dn_per_e", gain.lag_gain,
       "line of the variance plus the covariances with the eight neighbours, from the first two frames of " +
           std::to_string(gain.lag_levels.size()) +
-          " light levels and the dark, the two diagonals taken as alike; block jackknife",
+          " light levels and the dark; noise shared beyond the neighbours is not in it; block jackknife",
       gain.gain_note, gain.lag_reason);
 }
 

@@ -19,6 +19,7 @@ UnitSums::UnitSums(const RegionSummary& summary, ResamplingUnit unit)
       if (b >= summary.block_neighbours.size()) continue;
       const NeighbourSums& neighbours = summary.block_neighbours[b];
       each->pair_pixels += static_cast<double>(neighbours.pixels);
+      each->cells += static_cast<double>(neighbours.cells);
       for (std::size_t k = 0; k < kNeighbours; ++k) {
         each->pairs[k] += static_cast<double>(neighbours.pairs[k]);
         each->products[k] += neighbours.products[k];
@@ -35,6 +36,7 @@ UnitSums::Sums UnitSums::without(int left_out) const {
             all_.squares - out.squares,
             all_.dof - out.dof,
             all_.pair_pixels - out.pair_pixels,
+            all_.cells - out.cells,
             {},
             {}};
   for (std::size_t k = 0; k < kNeighbours; ++k) {
@@ -58,13 +60,17 @@ double UnitSums::dof(int left_out) const { return without(left_out).dof; }
 
 double UnitSums::neighbour_covariance(int left_out) const {
   const Sums sums = without(left_out);
-  // A pixel has two neighbours in its row, two in its column, four on diagonals; the difference of two frames
-  // has twice the covariance of one.
-  constexpr std::array<double, kNeighbours> kCount{2, 2, 4};
+  // A pixel has two neighbours in its row, two in its column, two on each diagonal; the difference of two
+  // frames has twice the covariance of one.
+  constexpr double kCount = 2;
   double sum = 0;
   for (std::size_t k = 0; k < kNeighbours; ++k)
-    if (sums.pairs[k] > 0) sum += kCount[k] * sums.products[k] / sums.pairs[k] / 2;
-  return sum;
+    if (sums.pairs[k] > 0) sum += kCount * sums.products[k] / sums.pairs[k] / 2;
+  // The mean that each cell lost varies by (variance + sum) / pixels, of which the variance's part is made
+  // good already; it is missing in each of the eight.
+  constexpr double kEight = 8;
+  const double pixels_of_cell = sums.cells > 0 ? sums.pair_pixels / sums.cells : 0.0;
+  return pixels_of_cell > kEight ? sum / (1 - kEight / pixels_of_cell) : sum;
 }
 
 double UnitSums::neighbour_pixels(int left_out) const { return without(left_out).pair_pixels; }

@@ -21,7 +21,7 @@ class UnitSums {
   double variance(int left_out) const;  ///< temporal [DN^2], 0 for a single frame
   double dof(int left_out) const;
   /// Sum of the covariances of a pixel's noise with its eight neighbours [DN^2], from the difference of the
-  /// first two frames; the two diagonals are taken as alike. 0 for a single frame.
+  /// first two frames. 0 for a single frame.
   double neighbour_covariance(int left_out) const;
   /// Pixels behind that.
   double neighbour_pixels(int left_out) const;
@@ -29,7 +29,7 @@ class UnitSums {
  private:
   struct Sums {
     double pixels = 0, sum = 0, squares = 0, dof = 0;
-    double pair_pixels = 0;
+    double pair_pixels = 0, cells = 0;
     std::array<double, kNeighbours> pairs{}, products{};
   };
   Sums without(int left_out) const;

@@ -1,6 +1,9 @@
 #include "model/read_noise.h"
 
+#include <algorithm>
+#include <boost/math/special_functions/digamma.hpp>
 #include <boost/math/special_functions/gamma.hpp>
+#include <boost/math/special_functions/trigamma.hpp>
 #include <cmath>
 #include <limits>
 
@@ -37,6 +40,16 @@ double deviation_bias(int frames) {
   if (frames < 2) return std::numeric_limits<double>::quiet_NaN();
   const double half = (frames - 1) / 2.0;
   return 1 / (boost::math::tgamma_delta_ratio(half, 0.5) * std::sqrt(half));
+}
+
+double deviation_log_variance(int frames) { return boost::math::trigamma((frames - 1) / 2.0) / 4; }
+
+double deviation_median(int frames, double log_variance) {
+  const double half = (frames - 1) / 2.0;
+  const double mean = (boost::math::digamma(half) - std::log(half)) / 2;
+  const double own = deviation_log_variance(frames);
+  const double share = own / std::max(own, log_variance);
+  return std::exp(mean + (std::log(deviation_median(frames)) - mean) * share);
 }
 
 double deviation_median(int frames) { return std::sqrt(chi_square_quantile(0.5, frames - 1) / (frames - 1)); }

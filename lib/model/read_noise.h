@@ -31,4 +31,12 @@ double deviation_bias(int frames);
 /// Median of the standard deviation of F normal samples over the true one. F >= 2, else NaN.
 double deviation_median(int frames);
 
+/// The same where the true deviations differ from pixel to pixel: `log_variance` is the variance of ln S over
+/// the pixels that was observed. Between the factor of equal pixels and exp(mean of ln S), which a wide
+/// population tends to: the skewness of ln S counts for less as the population spreads it (Cornish and
+/// Fisher's first term, derived).
+double deviation_median(int frames, double log_variance);
+/// Variance of ln S of equal pixels: trigamma((F-1)/2) / 4.
+double deviation_log_variance(int frames);
+
 }  // namespace evenfield

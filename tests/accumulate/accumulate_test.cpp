@@ -139,16 +139,16 @@ void check_neighbours(const RawFrames<T>& raw, const Geometry& geometry, const R
       for (int y = 0; y < band.height; ++y)
         for (int x = 0; x < cell.width; ++x) mean += difference(x, y) / n;
       double square = 0;
-      double products[kNeighbours] = {0, 0, 0};
-      std::int64_t pairs[kNeighbours] = {0, 0, 0};
-      constexpr int kStep[kNeighbours][2] = {{1, 0}, {0, 1}, {1, 1}};
+      double products[kNeighbours] = {};
+      std::int64_t pairs[kNeighbours] = {};
+      constexpr int kStep[kNeighbours][2] = {{1, 0}, {0, 1}, {1, 1}, {-1, 1}};
       for (int y = 0; y < band.height; ++y)
         for (int x = 0; x < cell.width; ++x) {
           square += (difference(x, y) - mean) * (difference(x, y) - mean);
           for (std::size_t k = 0; k < kNeighbours; ++k) {
             const int x2 = x + kStep[k][0];
             const int y2 = y + kStep[k][1];
-            if (x2 >= cell.width || y2 >= band.height) continue;
+            if (x2 < 0 || x2 >= cell.width || y2 >= band.height) continue;
             products[k] += (difference(x, y) - mean) * (difference(x2, y2) - mean);
             ++pairs[k];
           }
@@ -313,6 +313,7 @@ TEST_CASE("noise that a row's neighbours share shows in their covariance and whi
   CHECK(std::abs(correlation(0) - kTheta / (1 + kTheta * kTheta)) < 0.01);
   CHECK(std::abs(correlation(1)) < 0.01);
   CHECK(std::abs(correlation(2)) < 0.01);
+  CHECK(std::abs(correlation(3)) < 0.01);
 }
 
 TEST_CASE("bits of the codes: which occur and which all have, also in negative codes and floats") {

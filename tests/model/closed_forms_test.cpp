@@ -125,3 +125,16 @@ TEST_CASE("matrices that do not fit and values that are not finite are refused")
   const std::vector<Contribution> small{{1e-120, 4}, {1e-120, 4}};
   CHECK(effective_degrees_of_freedom(small) == doctest::Approx(8));
 }
+
+TEST_CASE(
+    "the median of deviations of pixels that differ lies between that of equal ones and their mean "
+    "logarithm") {
+  // F = 16: 0.9777136 for equal pixels (METHODS 2); exp(E ln S) = exp((digamma(7.5) - ln 7.5) / 2) = 0.9661
+  // for a wide population. Half of the variance from the population: the middle of the logarithms.
+  CHECK(deviation_median(16, 0.0) == doctest::Approx(0.9777136).epsilon(1e-6));
+  const double own = deviation_log_variance(16);
+  CHECK(own == doctest::Approx(0.03565397).epsilon(1e-6));  // trigamma(7.5) / 4, SciPy
+  const double wide = deviation_median(16, 1e6);
+  CHECK(wide == doctest::Approx(0.9665012).epsilon(1e-6));
+  CHECK(deviation_median(16, 2 * own) == doctest::Approx(std::sqrt(0.9777136 * wide)).epsilon(1e-5));
+}

@@ -206,6 +206,55 @@ TEST_CASE(
   }));
 }
 
+TEST_CASE("sharing along both axes and one diagonal leaves the lag-summed gain in place") {
+  Scene scene = camera(8);
+  scene.width = 256;
+  scene.height = 256;
+  scene.amplifiers.front().width = 256;
+  scene.camera.prnu_percent = 0.2;
+  add_levels(scene, 500, 500, 11, 8);
+  // 70 % of itself and 10 % of the pixels to the left, above, and above to the left: the sum of all
+  // covariances is 1.
+  const Measurement m = measure_scene(scene, 2, {}, [](const std::vector<std::uint16_t>& frame, int width) {
+    std::vector<std::uint16_t> out = frame;
+    const auto w = static_cast<std::size_t>(width);
+    for (std::size_t i = w + 1; i < frame.size(); ++i)
+      if (i % w != 0)
+        out[i] = static_cast<std::uint16_t>(
+            std::lround(0.7 * frame[i] + 0.1 * (frame[i - 1] + frame[i - w] + frame[i - w - 1])));
+    return out;
+  });
+  const Quantity& lags = quantity(m.result, "conversion_gain_lag_summed_dn_per_e");
+  REQUIRE(lags.value);
+  CHECK(std::abs(*lags.value - kGain) < 4 * *lags.standard_uncertainty);
+  CHECK(*lags.standard_uncertainty < 0.02 * kGain);
+  CHECK(*quantity(m.result, "conversion_gain_line_dn_per_e").value < 0.6 * kGain);
+}
+
+TEST_CASE(
+    "an offset that jitters is no flicker of the light, and its interval holds the truth with few frames") {
+  Pulls jitter;
+  int flickers = 0;
+  constexpr int kCameras = 60;
+  for (std::uint64_t seed = 0; seed < kCameras; ++seed) {
+    Scene scene = camera(300 + seed);
+    scene.series.clear();
+    add_series(scene, SeriesKind::bias, 0, 4);
+    scene.camera.offset_jitter_dn = 1.0;
+    for (const double e : {120, 1000, 2500, 4000, 5500})
+      add_series(scene, SeriesKind::flat, e / scene.light.electrons_per_s, 4);
+    const Measurement m = measure_scene(scene);
+    const Quantity& q = quantity(m.result, "offset_jitter_dn");
+    if (q.value) jitter.add(q, 1.0);
+    for (const Finding& f : m.result.findings) flickers += f.code == "light-drift" ? 1 : 0;
+  }
+  CHECK(jitter.values.size() >= kCameras - 2);
+  // 95 % of them, less four standard deviations of a binomial share.
+  const double n = static_cast<double>(jitter.values.size());
+  CHECK(jitter.inside > 0.95 * n - 4 * std::sqrt(0.95 * 0.05 * n));
+  CHECK(flickers == 0);
+}
+
 TEST_CASE("pulls of what follows from others have mean 0 and spread 1") {
   std::map<std::string, Pulls> pulls;
   constexpr int kCameras = 60;

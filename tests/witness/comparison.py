@@ -13,6 +13,7 @@ OPEN = {name: SATURATION for name in (
     "saturation_dn", "saturation_capacity_e", "dynamic_range_ratio", "dynamic_range_db", "dynamic_range_bits", "snr_max_ratio",
     "snr_max_db")}
 OPEN["conversion_gain_lag_summed_dn_per_e"] = (1.0, "which pairs of neighbours at borders, and whose variance, is not fixed")
+OPEN["read_noise_median_e"] = (0.5, "the witness takes a log-normal population, the program the first term of how unequal pixels move a median")
 HITS_DIFFER = (0.25, "program and witness count hits differently: the pages give no threshold")
 
 

@@ -199,9 +199,8 @@ class RegionWitness:
         self.put("read_noise_e", math.sqrt(square) / self.factor)
         count = len(shortest.frames)
         if count >= 16:
-            bias = stats.chi2.median(count - 1) / (count - 1)
-            middle = numpy.median(stacks.variance_map(shortest.frames)) / bias
-            self.put_root("read_noise_median_e", middle - self.quantization, self.factor)
+            middle = stacks.median_of_true_deviations(stacks.variance_map(shortest.frames), count)
+            self.put_root("read_noise_median_e", middle ** 2 - self.quantization, self.factor)
         else:
             self.reasons["read_noise_median_e"] = "fewer than 16 dark frames"
         row, pixel = stacks.row_and_pixel_noise(shortest.frames)

@@ -1,9 +1,11 @@
 """What one stack of frames of one region says: means, temporal variance, spatial variance and its parts. Whole frames,
 float64, straight from the definitions (METHODS 1.2, 5.1 to 5.3)."""
 import numpy
+from scipy import optimize, stats
 
 HIT_SIGMAS = 8.0
 HIGHPASS_BORDER = 9
+HIGHPASS_LINE_GAIN = 0.8890622  # METHODS 5.3: of a pattern of columns or rows only
 HIGHPASS_NOISE_GAIN = 0.9884951081  # METHODS 5.3, check SP-05: what the filter leaves of the variance of white noise
 
 
@@ -102,12 +104,13 @@ def spatial_parts(frames, variance, row_noise):
     row, column, pixel = row_column_pixel(image)
     return {"": image.var() - variance / count, "row_": row - row_noise / count, "column_": column,
             "pixel_": pixel - (variance - row_noise) / count,
-            "highpass_": high_pass(image).var() / HIGHPASS_NOISE_GAIN - variance / count}
+            # Row noise passes the filter as a pattern of lines does (METHODS 5.3), all other noise as white.
+            "highpass_": (high_pass(image).var() - ((variance - row_noise) * HIGHPASS_NOISE_GAIN + row_noise * HIGHPASS_LINE_GAIN) / count)
+                         / HIGHPASS_NOISE_GAIN}
 
 
 def neighbour_covariances(frames, dark_level=None):
-    """Sum of the covariances with the eight neighbours, from half the difference of the first two frames; both diagonals are taken
-    to be as the one of lag (1, 1)."""
+    """Sum of the covariances with the eight neighbours, from half the difference of the first two frames."""
     pair, growth = frames[:2], 1.0
     if dark_level is not None:
         scales = scales_of(pair, dark_level)
@@ -119,4 +122,23 @@ def neighbour_covariances(frames, dark_level=None):
     def covariance(down, right):
         return numpy.mean(difference[:height - down, :width - right] * difference[down:, right:]) / 2 / growth
 
-    return 2 * covariance(0, 1) + 2 * covariance(1, 0) + 4 * covariance(1, 1)
+    down_left = numpy.mean(difference[:-1, 1:] * difference[1:, :-1]) / 2 / growth
+    return 2 * (covariance(0, 1) + covariance(1, 0) + covariance(1, 1) + down_left)
+
+
+def median_of_true_deviations(variances, count):
+    """Median over the pixels of the true standard deviation, if these are distributed log-normally: the distribution whose sample
+    deviations in `count` frames have the median and the quartiles that were found, by quadrature over the population."""
+    found = numpy.quantile(numpy.log(variances[variances > 0]) / 2, [0.25, 0.5, 0.75])
+    nodes, weights = numpy.polynomial.hermite_e.hermegauss(60)
+    weights = weights / weights.sum()
+
+    def quantile(share, spread):
+        def below(x):
+            return weights @ stats.chi2.cdf((count - 1) * numpy.exp(2 * (x - spread * nodes)), count - 1) - share
+        return optimize.brentq(below, -6 - 6 * spread, 6 + 6 * spread)
+
+    def excess(spread):
+        return quantile(0.75, spread) - quantile(0.25, spread) - (found[2] - found[0])
+    spread = optimize.brentq(excess, 0, 3) if excess(0) < 0 else 0.0
+    return numpy.exp(found[1] - quantile(0.5, spread))
