@@ -94,7 +94,11 @@ Nonuniformity find_nonuniformity(const RegionLevels& levels) {
   const SpatialEstimate off = spatial_estimate(levels, *dark);
   out.light = {flat.square - off.square, std::hypot(flat.square_uncertainty, off.square_uncertainty),
                nearest->series};
-  out.light_dark_series = *dark;
+  out.light_dark_series = out.light_high_pass_dark_series = *dark;
+  // A difference of darks of a ten-thousandth of the flat's pattern moves its root by 5e-5.
+  constexpr double kAlike = 1e-4;
+  if (out.dark && std::abs(out.dark->square - off.square) < kAlike * flat.square)
+    out.light_high_pass_dark_series = out.dark->series;
   out.light_signal_dn = nearest->signal;
   double variance = std::pow(levels.mean_uncertainty(nearest->series), 2);
   for (const auto& [series, weight] : nearest->dark.mean)

@@ -23,6 +23,8 @@ struct Nonuniformity {
   std::optional<SpatialEstimate>
       light;  ///< of the unsaturated flat nearest half of the range top, its dark's taken off
   std::size_t light_dark_series = 0;  ///< whose pattern was taken off
+  /// The same for what needs a second look: the darks of DSNU where either serves, which spares a look.
+  std::size_t light_high_pass_dark_series = 0;
   double light_signal_dn = 0;
   double light_signal_uncertainty_dn = 0;
   std::string light_reason;

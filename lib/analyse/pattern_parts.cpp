@@ -111,7 +111,8 @@ Patterns find_pattern_parts(const RegionLevels& levels, const Nonuniformity& non
   std::optional<double> filtered_flat;
   std::optional<double> filtered_dark;
   const auto high_flat = high_pass_part(levels, flat, out.light.high_pass_reason, filtered_flat);
-  const auto high_dark = high_pass_part(levels, dark, out.light.high_pass_reason, filtered_dark);
+  const auto high_dark = high_pass_part(levels, nonuniformity.light_high_pass_dark_series,
+                                        out.light.high_pass_reason, filtered_dark);
   if (!high_flat || !high_dark) return out;
   out.light.high_pass = difference(*high_flat, *high_dark);
   if (filtered_flat && filtered_dark && *filtered_flat > *filtered_dark)

@@ -23,7 +23,7 @@ std::vector<SecondLook> plan_second_look(const AnalysisInput& input) {
     if (pattern.dark) look(pattern.dark->series).pictures = true;
     if (pattern.light) {
       look(pattern.light->series).pictures = true;
-      look(pattern.light_dark_series);
+      look(pattern.light_high_pass_dark_series);
     }
     const auto darks = noise_series(levels);
     if (darks && levels.summary(*darks).frames >= kFramesForPixelNoise &&
