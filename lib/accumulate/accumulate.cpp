@@ -8,11 +8,12 @@
 #include <map>
 #include <memory>
 #include <mutex>
-#include <new>
 #include <string_view>
 #include <vector>
 
 #include "accumulate/cell_kernel.h"
+#include "accumulate/code_sample.h"
+#include "accumulate/raw_memory.h"
 #include "base/parallel.h"
 
 namespace evenfield {
@@ -56,28 +57,6 @@ struct BandResult {
 struct ItemResult {
   std::vector<BandResult> bands;
   std::vector<Hash> hashes;  ///< [frame]
-};
-
-/// Memory that is not filled with zeros before use, at the begin of a line of the cache.
-class RawMemory {
- public:
-  /// At least so many bytes; what was there is lost if there were fewer.
-  std::byte* room_for(std::size_t bytes) {
-    if (bytes > bytes_) {
-      memory_.reset();
-      memory_.reset(static_cast<std::byte*>(::operator new(bytes, kLine)));
-      bytes_ = bytes;
-    }
-    return memory_.get();
-  }
-
- private:
-  static constexpr std::align_val_t kLine{64};
-  struct Free {
-    void operator()(std::byte* p) const { ::operator delete(p, kLine); }
-  };
-  std::unique_ptr<std::byte, Free> memory_;
-  std::size_t bytes_ = 0;
 };
 
 /// What one thread needs while it works on a band.
@@ -380,70 +359,6 @@ SeriesStatistics Accumulator::finish() {
     out_.fingerprints.push_back(std::move(digits));
   }
   return std::move(out_);
-}
-
-/// The different finite codes among these pixels, ascending.
-template <class T>
-std::vector<double> different_codes(const std::byte* bytes, std::size_t count) {
-  const auto* pixels = reinterpret_cast<const T*>(bytes);
-  std::vector<double> codes;
-  if constexpr (std::is_integral_v<T> && sizeof(T) <= 2) {
-    // A mark for each code there can be costs less than sorting.
-    constexpr int kLowest = std::numeric_limits<T>::min();
-    std::vector<char> seen(std::size_t{1} << (8 * sizeof(T)), 0);
-    for (std::size_t i = 0; i < count; ++i) seen[static_cast<std::size_t>(pixels[i] - kLowest)] = 1;
-    for (std::size_t i = 0; i < seen.size(); ++i)
-      if (seen[i] != 0) codes.push_back(static_cast<double>(i) + kLowest);
-  } else {
-    for (std::size_t i = 0; i < count; ++i)
-      if (std::isfinite(static_cast<double>(pixels[i]))) codes.push_back(static_cast<double>(pixels[i]));
-    std::sort(codes.begin(), codes.end());
-    codes.erase(std::unique(codes.begin(), codes.end()), codes.end());
-  }
-  return codes;
-}
-
-/// Codes that occur in the middle rows of the first region in the first frame, in about 65 000 pixels.
-Status sample_codes(const FrameStack& frames,
-                    const Geometry& geometry,
-                    int worker,
-                    std::vector<double>& out) {
-  constexpr int kSamplePixels = 65536;
-  const FrameShape shape = frames.shape();
-  const Rect& rect = geometry.grids.front().rect;
-  const int rows = std::clamp(kSamplePixels / shape.width, 1, rect.height);
-  const int y = rect.y + (rect.height - rows) / 2;
-  const std::size_t count = static_cast<std::size_t>(shape.width) * static_cast<std::size_t>(rows);
-  RawMemory memory;
-  std::byte* bytes = memory.room_for(count * bytes_per_pixel(shape.type));
-  if (const Status read = frames.read_rows(0, y, rows, bytes, worker); !read) return read;
-  switch (shape.type) {
-    case PixelType::u8:
-      out = different_codes<std::uint8_t>(bytes, count);
-      break;
-    case PixelType::i8:
-      out = different_codes<std::int8_t>(bytes, count);
-      break;
-    case PixelType::u16:
-      out = different_codes<std::uint16_t>(bytes, count);
-      break;
-    case PixelType::i16:
-      out = different_codes<std::int16_t>(bytes, count);
-      break;
-    case PixelType::u32:
-      out = different_codes<std::uint32_t>(bytes, count);
-      break;
-    case PixelType::i32:
-      out = different_codes<std::int32_t>(bytes, count);
-      break;
-    case PixelType::f32:
-      out = different_codes<float>(bytes, count);
-      break;
-    case PixelType::f64:
-      out = different_codes<double>(bytes, count);
-      break;
-  }
-  return Done{};
 }
 
 }  // namespace
