@@ -93,8 +93,10 @@ void find_linear_limit(const RegionLevels& levels, const Response& response, Ful
       const double slope = (level->signal - before->signal) / (deviation - deviation_before);
       const double noise = std::hypot((1 - share) * levels.mean_uncertainty(before->series) / before->signal,
                                       share * levels.mean_uncertainty(level->series) / level->signal);
-      // Where between the two levels the response leaves the line a kink does not tell.
-      const double bracket = std::abs(level->signal - before->signal) / std::sqrt(12.0);
+      // Where between the two levels the response leaves the line a kink does not tell, and a straight line
+      // between them errs to one side: the root of the mean square over the bracket, not its standard
+      // deviation.
+      const double bracket = std::abs(level->signal - before->signal) / std::sqrt(3.0);
       out.linear_dn = Estimate{signal, std::hypot(bracket, slope * 100 * noise), 0.0, std::nullopt};
       return;
     }
