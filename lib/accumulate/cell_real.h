@@ -35,36 +35,67 @@ struct RealRange {
   double high = 0;
 };
 
+/// Extremes of a row, and whether all of it is finite, in eight lanes of the pixels' own type.
+template <class T>
+struct RealLanes {
+  T low[kParts], high[kParts];
+  T nothing[kParts] = {};  // v - v is 0, or not a number where v is not finite
+
+  explicit RealLanes(T first) {
+    for (int k = 0; k < kParts; ++k) low[k] = high[k] = first;
+  }
+  void look(const T* row, int width) {
+    // Copies: the row might lie where the lanes do, as far as a compiler knows.
+    T l[kParts], h[kParts], n[kParts];
+    for (int k = 0; k < kParts; ++k) {
+      l[k] = low[k];
+      h[k] = high[k];
+      n[k] = nothing[k];
+    }
+    int x = 0;
+    for (; x + kParts <= width; x += kParts) {
+      for (int k = 0; k < kParts; ++k) {
+        const T v = row[x + k];
+        l[k] = v < l[k] ? v : l[k];
+        h[k] = v > h[k] ? v : h[k];
+        n[k] += v - v;
+      }
+    }
+    for (int k = 0; x < width; ++x, ++k) {
+      l[k] = row[x] < l[k] ? row[x] : l[k];
+      h[k] = row[x] > h[k] ? row[x] : h[k];
+      n[k] += row[x] - row[x];
+    }
+    for (int k = 0; k < kParts; ++k) {
+      low[k] = l[k];
+      high[k] = h[k];
+      nothing[k] = n[k];
+    }
+  }
+};
+
 /// Centres the pixels of all frames; false if one is not finite.
 template <class T>
 bool real_gather(const CellInput& cell, double centre, RealWorkspace& work, RealRange& range) {
-  double low[kParts];
-  double high[kParts];
-  double nothing[kParts] = {};  // v - v is 0, or not a number where v is not finite
-  for (int k = 0; k < kParts; ++k) low[k] = high[k] = static_cast<double>(*row_of<T>(cell, 0, 0));
+  RealLanes<T> lanes(*row_of<T>(cell, 0, 0));
   for (int f = 0; f < cell.frames; ++f) {
     double* to = work.centred[static_cast<std::size_t>(f)].data();
     for (int y = 0; y < cell.height; ++y, to += cell.width) {
       const T* row = row_of<T>(cell, f, y);
-      const auto take = [&](int x, int k) {
-        const auto v = static_cast<double>(row[x]);
-        low[k] = v < low[k] ? v : low[k];
-        high[k] = v > high[k] ? v : high[k];
-        nothing[k] += v - v;
-        to[x] = v - centre;
-      };
-      int x = 0;
-      for (; x + kParts <= cell.width; x += kParts)
-        for (int k = 0; k < kParts; ++k) take(x + k, k);
-      for (int k = 0; x < cell.width; ++x, ++k) take(x, k);
+      lanes.look(row, cell.width);
+      for (int x = 0; x < cell.width; ++x) to[x] = static_cast<double>(row[x]) - centre;
     }
   }
-  range = {low[0], high[0]};
-  for (int k = 1; k < kParts; ++k) {
-    range.low = low[k] < range.low ? low[k] : range.low;
-    range.high = high[k] > range.high ? high[k] : range.high;
+  range = {static_cast<double>(lanes.low[0]), static_cast<double>(lanes.high[0])};
+  bool finite = true;
+  for (int k = 0; k < kParts; ++k) {
+    const auto low = static_cast<double>(lanes.low[k]);
+    const auto high = static_cast<double>(lanes.high[k]);
+    range.low = low < range.low ? low : range.low;
+    range.high = high > range.high ? high : range.high;
+    finite = finite && lanes.nothing[k] == T{0};
   }
-  return sum_of_parts(nothing) == 0;
+  return finite;
 }
 
 /// The first frame with a pixel that is not finite, or -1.

@@ -12,11 +12,6 @@ namespace {
 /// Standard uncertainties from which on something is called seen: less than 1e-6 of clean sessions by chance.
 constexpr double kSeen = 5.0;
 
-std::string in_region(const RegionLevels& levels) {
-  const std::string& name = levels.input().regions[levels.region()].name;
-  return name == "whole" ? "" : " in region " + name;
-}
-
 void range_findings(const RegionLevels& levels, const FullWell& well, std::vector<Finding>& out) {
   if (!well.converter_limited) return;
   out.push_back({"converter-limited",

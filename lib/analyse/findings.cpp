@@ -19,11 +19,6 @@ constexpr std::size_t kLinearityLevels = 9;
 /// unmatched dark.
 constexpr double kUnseenDarkCurrent_e_per_s = 10.0;
 
-std::string in_region(const RegionLevels& levels) {
-  const std::string& name = levels.input().regions[levels.region()].name;
-  return name == "whole" ? "" : " in region " + name;
-}
-
 void add(std::vector<Finding>& out, Finding finding) { out.push_back(std::move(finding)); }
 
 std::string counted(std::size_t number, const std::string& one, const std::string& many) {

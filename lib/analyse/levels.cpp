@@ -302,4 +302,9 @@ void RegionLevels::find_range_top() {
     top_.unresolved = "the frames show no noise, so nothing is known of the uncertainty";
 }
 
+std::string in_region(const RegionLevels& levels) {
+  const std::string& name = levels.input().regions[levels.region()].name;
+  return name == "whole" ? "" : " in region " + name;
+}
+
 }  // namespace evenfield

@@ -93,4 +93,7 @@ class RegionLevels {
   double flicker_ = 0, flicker_dof_ = 0, jitter_ = 0, jitter_dof_ = 0;
 };
 
+/// " in region NAME" for messages; nothing where the whole frame is the region.
+std::string in_region(const RegionLevels& levels);
+
 }  // namespace evenfield

@@ -43,7 +43,7 @@ struct BandPixels {
 /// light. Uneven light falls to half across the band, and one pixel of the band is hit, which is a dozen or
 /// so hits in 2048 x 2048 pixels and eight frames for every tenth band: more than a real frame has.
 template <class Pixel>
-BandPixels<Pixel> exposed(bool uneven) {
+BandPixels<Pixel> exposed(bool uneven, bool real = false) {
   const bool is_byte = sizeof(Pixel) == 1;
   const double offset = std::is_same_v<Pixel, std::int16_t> ? -32768 : 0;
   const double mean = is_byte ? 120 : 30000;
@@ -56,8 +56,9 @@ BandPixels<Pixel> exposed(bool uneven) {
     const auto column = static_cast<double>(i % kColumns);
     const double light = uneven ? 1 - 0.5 * column / kColumns : 1.0;
     const double drift = 1 + 0.01 * std::sin(frame);
-    band.values[i] = static_cast<Pixel>(
-        std::rint(offset + mean * light * drift + noise * std::sqrt(light) * normal(bits)));
+    const double value = offset + mean * light * drift + noise * std::sqrt(light) * normal(bits);
+    // Real numbers, as calibrated frames hold them, go another way than whole ones of the same type.
+    band.values[i] = static_cast<Pixel>(real ? value : std::rint(value));
   }
   if (uneven) {
     const std::size_t hit = 3 * kFramePixels + 5 * kColumns + 1000;
@@ -73,8 +74,8 @@ void set_bytes(benchmark::State& state) {
 }
 
 template <class Pixel>
-void measure_band(benchmark::State& state, PixelType type, bool uneven, bool portable) {
-  const BandPixels<Pixel> band = exposed<Pixel>(uneven);
+void measure_band(benchmark::State& state, PixelType type, bool uneven, bool portable, bool real) {
+  const BandPixels<Pixel> band = exposed<Pixel>(uneven, real);
   const CellKernels kernels = evenfield::cell_kernels(type, portable);
   const auto totals = std::make_unique<CellTotals>();
   std::vector<double> memory(kernels.workspace_bytes / sizeof(double) + 8);
@@ -121,12 +122,12 @@ void hash_band(benchmark::State& state, bool portable) {
 }
 
 template <class Pixel>
-void add_type(const std::string& name, PixelType type) {
+void add_type(const std::string& name, PixelType type, bool real = false) {
   for (const bool uneven : {false, true}) {
     for (const bool portable : {false, true}) {
       const std::string label = "measure/" + name + (uneven ? "/uneven_with_hits" : "/even") +
                                 (portable ? "/portable" : "/special");
-      benchmark::RegisterBenchmark(label.c_str(), measure_band<Pixel>, type, uneven, portable);
+      benchmark::RegisterBenchmark(label.c_str(), measure_band<Pixel>, type, uneven, portable, real);
     }
   }
 }
@@ -141,6 +142,8 @@ int main(int argc, char** argv) {
   add_type<std::int16_t>("i16", PixelType::i16);
   add_type<std::uint32_t>("u32", PixelType::u32);
   add_type<float>("f32", PixelType::f32);
+  add_type<float>("f32_real", PixelType::f32, true);
+  add_type<double>("f64_real", PixelType::f64, true);
   benchmark::RegisterBenchmark("hash/special", hash_band, false);
   benchmark::RegisterBenchmark("hash/portable", hash_band, true);
   benchmark::RunSpecifiedBenchmarks();
